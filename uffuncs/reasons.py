@@ -1,0 +1,92 @@
+"""The words of UF_WHY: why there is no result, when to be careful with one, and what is worth knowing besides."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+
+from .declaration import Fitted, Function, Rule
+
+
+def no_result_reason(record: Function, values: Sequence) -> str:
+    """Why sound arguments (in SI) gave no finite result."""
+    for rule in record.refuses:
+        if _holds(rule.when, rule.names, record, values, None):
+            return f"{record.worksheet_name}: {_filled(rule.text, record, values, None)}"
+    zeros = [a.name for a, v in zip(record.arguments, values) if a.kind == "number" and v is not None and v == 0]
+    cause = f"; {', '.join(zeros)} {'is' if len(zeros) == 1 else 'are'} 0" if zeros else ""
+    return f"{record.worksheet_name}: no finite result, by a division by zero or a number too large{cause}"
+
+
+def cautions(record: Function, values: Sequence, result: object = None) -> list[str]:
+    """What to be careful with, for arguments and result in SI."""
+    found = [_filled(rule.text, record, values, result) for rule in record.cautions
+             if _holds(rule.when, rule.names, record, values, result)]
+    for fitted in record.fitted:
+        found += filter(None, [_outside_fitted(record, fitted, values, result)])
+    for argument, value in zip(record.arguments, values):
+        if argument.kind == "number" and not argument.required and _is_zero(value) and not _is_zero(argument.default):
+            if argument.quantity.offset == 0:
+                found.append(f"{argument.name} is exactly 0, not its default {argument.default_text}: a blank cell in Calc?")
+    return found
+
+
+def remarks(record: Function, values: Sequence, result: object = None) -> list[str]:
+    """What else there is to tell, for example the branch used."""
+    return [_filled(rule.text, record, values, result) for rule in record.remarks
+            if _holds(rule.when, rule.names, record, values, result)]
+
+
+def _is_zero(value: object) -> bool:
+    return isinstance(value, (int, float)) and value == 0
+
+
+def _outside_fitted(record: Function, fitted: Fitted, values: Sequence, result: object) -> str:
+    if fitted.when is not None and not _call(fitted.when, record, values, result):
+        return ""
+    if fitted.value is None:
+        value = _named(record, values, result)[fitted.name]
+        shown = record.arguments[record.argument_names.index(fitted.name)].quantity.shown
+    else:
+        value = _call(fitted.value, record, values, result)
+        shown = "{:.6g}".format
+    if value is None or not math.isfinite(value):
+        return ""
+    # Nine digits decide: 20 °C given in °F may not fall outside 20 °C by rounding.
+    if fitted.low * (1 - math.copysign(1e-9, fitted.low)) <= value <= fitted.high * (1 + math.copysign(1e-9, fitted.high)):
+        return ""
+    return f"{fitted.name} {shown(value)} is outside {shown(fitted.low)} to {shown(fitted.high)}, where the equation was fitted"
+
+
+def _named(record: Function, values: Sequence, result: object) -> dict[str, object]:
+    return {**dict(zip(record.argument_names, values)), "result": result}
+
+
+def _call(condition, record: Function, values: Sequence, result: object):
+    from inspect import signature
+
+    named = _named(record, values, result)
+    try:
+        return condition(**{name: named[name] for name in signature(condition).parameters})
+    except (ZeroDivisionError, OverflowError):
+        return None
+
+
+def _holds(when, names: Sequence[str], record: Function, values: Sequence, result: object) -> bool:
+    named = _named(record, values, result)
+    try:
+        return bool(when(**{name: named[name] for name in names}))
+    except (ArithmeticError, TypeError):  # the condition cannot be told, for example on an argument left out
+        return False
+
+
+def _filled(text: str, record: Function, values: Sequence, result: object) -> str:
+    shown = {}
+    for argument, value in zip(record.arguments, values):
+        if argument.quantity is not None and isinstance(value, (int, float)):
+            shown[argument.name] = f"{argument.name} {argument.quantity.shown(value)}"
+        else:
+            shown[argument.name] = argument.name
+    if record.results and isinstance(result, (int, float)):
+        shown["result"] = record.results[0].shown(result)
+    return text.format_map(shown) if "{" in text else text

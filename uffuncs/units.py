@@ -1,0 +1,234 @@
+"""Units: each unit text is compiled once to (scale, offset), with  SI value = scale * number + offset.
+
+The worksheet units stand in a table, so that a workbook with plain numbers never loads pint; every other unit text is
+compiled by pint, once. pint never touches a number of a calculation.
+"""
+
+from __future__ import annotations
+
+import re
+from functools import lru_cache
+
+from .errors import InvalidInput
+
+HOUR = 3600.0
+YEAR = 365.25 * 24 * HOUR
+
+#: worksheet unit -> (SI unit, scale, offset)
+WORKSHEET_UNITS: dict[str, tuple[str, float, float]] = {
+    "-": ("-", 1.0, 0.0),
+    "L/(m²·h)": ("m/s", 1e-3 / HOUR, 0.0),
+    "L/(m²·h·bar)": ("m/(s·Pa)", 1e-8 / HOUR, 0.0),
+    "bar": ("Pa", 1e5, 0.0),
+    "Pa": ("Pa", 1.0, 0.0),
+    "mbar/min": ("Pa/s", 100.0 / 60, 0.0),
+    "°C": ("K", 1.0, 273.15),
+    "°C difference": ("K", 1.0, 0.0),
+    "mPa·s": ("Pa·s", 1e-3, 0.0),
+    "Pa·sⁿ": ("Pa·sⁿ", 1.0, 0.0),
+    "kg/m³": ("kg/m³", 1.0, 0.0),
+    "g/L": ("kg/m³", 1.0, 0.0),
+    "g/g": ("-", 1.0, 0.0),
+    "mol/L": ("mol/m³", 1e3, 0.0),
+    "kDa": ("kg/mol", 1.0, 0.0),
+    "mL/g": ("m³/kg", 1e-3, 0.0),
+    "L/g": ("m³/kg", 1.0, 0.0),
+    "L²/g²": ("m⁶/kg²", 1.0, 0.0),
+    "mol·mL/g²": ("mol·m³/kg²", 1.0, 0.0),
+    "mol·mL²/g³": ("mol·m⁶/kg³", 1e-3, 0.0),
+    "bar/(g/L)": ("Pa·m³/kg", 1e5, 0.0),
+    "bar/(g/L)²": ("Pa·m⁶/kg²", 1e5, 0.0),
+    "bar/(g/L)³": ("Pa·m⁹/kg³", 1e5, 0.0),
+    "bar/(g/L)ⁿ": ("Pa/(kg/m³)ⁿ", 1e5, 0.0),
+    "nm": ("m", 1e-9, 0.0),
+    "µm": ("m", 1e-6, 0.0),
+    "mm": ("m", 1e-3, 0.0),
+    "m": ("m", 1.0, 0.0),
+    "m²": ("m²", 1.0, 0.0),
+    "m³": ("m³", 1.0, 0.0),
+    "L": ("m³", 1e-3, 0.0),
+    "L/m²": ("m", 1e-3, 0.0),
+    "m³/h": ("m³/s", 1.0 / HOUR, 0.0),
+    "m/s": ("m/s", 1.0, 0.0),
+    "m²/s": ("m²/s", 1.0, 0.0),
+    "1/s": ("1/s", 1.0, 0.0),
+    "1/m": ("1/m", 1.0, 0.0),
+    "1/m²": ("1/m²", 1.0, 0.0),
+    "m/kg": ("m/kg", 1.0, 0.0),
+    "1/(m·h)": ("1/(m·s)", 1.0 / HOUR, 0.0),
+    "s/L²": ("s/m⁶", 1e6, 0.0),
+    "%/min": ("1/s", 0.01 / 60, 0.0),
+    "s": ("s", 1.0, 0.0),
+    "min": ("s", 60.0, 0.0),
+    "h": ("s", HOUR, 0.0),
+    "min/day": ("-", 1.0 / 1440, 0.0),
+    "h/day": ("-", 1.0 / 24, 0.0),
+    "1/day": ("1/s", 1.0 / (24 * HOUR), 0.0),
+    "1/year": ("1/s", 1.0 / YEAR, 0.0),
+    "year": ("s", YEAR, 0.0),
+    "kW": ("W", 1e3, 0.0),
+    "kWh/m³": ("J/m³", 3.6e6, 0.0),
+    "kJ/(kg·K)": ("J/(kg·K)", 1e3, 0.0),
+    "mN/m": ("N/m", 1e-3, 0.0),
+    "deg": ("rad", 0.017453292519943295, 0.0),
+    "g/m²": ("kg/m²", 1e-3, 0.0),
+    "g·h/(L·year)": ("kg/m³", HOUR / YEAR, 0.0),
+    "m³/year": ("m³/s", 1.0 / YEAR, 0.0),
+    "money": ("money", 1.0, 0.0),
+    "money/m²": ("money/m²", 1.0, 0.0),
+    "money/m³": ("money/m³", 1.0, 0.0),
+    "money/kWh": ("money/J", 1.0 / 3.6e6, 0.0),
+    "money/year": ("money/s", 1.0 / YEAR, 0.0),
+}
+
+#: Spellings of the trade that pint does not know, or reads as something else.
+TRADE_DEFINITIONS = (
+    "LMH = liter / meter**2 / hour",
+    "gfd = gallon / foot**2 / day = _ = GFD",
+    "dalton = gram / mole = Da",  # a molar mass here, never the mass of one molecule
+    "gpm = gallon / minute = _ = GPM",
+    "gpd = gallon / day = _ = GPD",
+    "MGD = 1e6 * gallon / day = _ = mgd",
+    "MLD = 1e6 * liter / day",
+    "ppm_by_mass_in_water = milligram / liter",
+)
+
+_PRESSURE = r"(?:k|m|M|h)?(?:Pa|bar|psi|atm)"
+_GAUGE = re.compile(rf"({_PRESSURE})\s*(?:g|\(g\)|gauge)", re.IGNORECASE)
+_ABSOLUTE = re.compile(rf"({_PRESSURE})\s*(?:a|\(a\)|abs|absolute)", re.IGNORECASE)
+_SUPERSCRIPTS = str.maketrans("⁰¹²³⁴⁵⁶⁷⁸⁹⁻", "0123456789-")
+_SUPERSCRIPT_RUN = re.compile(r"⁻?[⁰¹²³⁴⁵⁶⁷⁸⁹]+")
+_PLAIN_EXPONENT = re.compile(r"(?<=[A-Za-zµ°])(-?\d)(?![\dA-Za-z])")
+
+
+def worksheet_unit(text: str) -> tuple[str, float, float]:
+    """(SI unit, scale, offset) of a worksheet unit."""
+    return WORKSHEET_UNITS[text]
+
+
+@lru_cache(maxsize=4096)
+def compile_unit(text: str, si_unit: str, absolute: bool = False) -> tuple[float, float]:
+    """(scale, offset) from a unit text to an SI unit.
+
+    Parameters
+    ----------
+    text : str
+        A unit as an engineer writes it: ``psi``, ``gfd``, ``L/(m²·h)``, ``m3/h``, ``degF``, ``%``.
+    si_unit : str
+        The SI unit wanted, as spelled in the table of worksheet units.
+    absolute : bool
+        Whether the quantity is an absolute pressure; all other pressures are gauge pressures or differences.
+
+    Raises
+    ------
+    InvalidInput
+        The unit is unknown, has another dimension, or is a gauge pressure where an absolute one is meant (or the reverse).
+    """
+    text = text.strip()
+    known = WORKSHEET_UNITS.get(text)
+    if known is not None and known[0] == si_unit and not (si_unit == "Pa" and absolute):
+        return known[1], known[2]
+    if si_unit == "Pa":
+        text = _pressure_reference(text, absolute)
+    if si_unit == "K" and text in ("C", "F"):
+        text = "deg" + text
+    scale, offset = _to_base(text)
+    si_scale, _ = _to_base(si_unit)
+    if _dimension(text) != _dimension(si_unit):
+        raise InvalidInput(f"the unit '{text}' does not fit; give a unit like '{_readable(si_unit)}'")
+    return scale / si_scale, offset
+
+
+def convert(value: float, from_unit: str, to_unit: str) -> float:
+    """A number in one unit, expressed in another of the same dimension.
+
+    Gauge and absolute pressures are not mixed: the difference is the atmospheric pressure of the place.
+
+    Raises
+    ------
+    InvalidInput
+        An unknown unit, unlike dimensions, or a gauge pressure asked for as an absolute one.
+    """
+    pressures = [(_GAUGE.fullmatch(u.strip()), _ABSOLUTE.fullmatch(u.strip())) for u in (from_unit, to_unit)]
+    (gauge_in, absolute_in), (gauge_out, absolute_out) = pressures
+    if (gauge_in and absolute_out) or (absolute_in and gauge_out):
+        raise InvalidInput(f"'{from_unit}' and '{to_unit}' differ by the atmospheric pressure; add or subtract it")
+    plain = [(g or a)[1] if (g or a) else u for (g, a), u in zip(pressures, (from_unit, to_unit))]
+    for unit in plain:
+        _to_base(unit)
+    if _dimension(plain[0]) != _dimension(plain[1]):
+        raise InvalidInput(f"'{from_unit}' and '{to_unit}' measure different things")
+    (scale_in, offset_in), (scale_out, offset_out) = map(_to_base, plain)
+    result = (scale_in * value + offset_in - offset_out) / scale_out
+    # Zero points are far away on the kelvin scale: nine decimals of a temperature are all that a float holds of it.
+    return round(result, 9) if offset_in or offset_out else result
+
+
+def _pressure_reference(text: str, absolute: bool) -> str:
+    gauge, is_absolute = _GAUGE.fullmatch(text), _ABSOLUTE.fullmatch(text)
+    if absolute and gauge:
+        raise InvalidInput(f"'{text}' is a gauge pressure; give an absolute pressure, for example '1.013 bara'")
+    if not absolute and is_absolute:
+        raise InvalidInput(f"'{text}' is an absolute pressure; give a gauge pressure or a difference, for example '2 barg'")
+    return (gauge or is_absolute)[1] if (gauge or is_absolute) else text
+
+
+def _readable(si_unit: str) -> str:
+    """The worksheet unit for an SI unit, for messages."""
+    return next((unit for unit, (si, _, _) in WORKSHEET_UNITS.items() if si == si_unit), si_unit)
+
+
+def _plain(text: str) -> str:
+    """A unit text in the spelling that pint reads."""
+    if text in ("", "-", "–"):
+        return "dimensionless"
+    text = text.replace("μ", "µ").replace("°C difference", "delta_degC").replace("°", "deg").replace("%", "percent")
+    text = _SUPERSCRIPT_RUN.sub(lambda m: f"**{m[0].translate(_SUPERSCRIPTS)}", text)
+    text = text.replace("·", "*").replace("×", "*").replace("−", "-")
+    return _PLAIN_EXPONENT.sub(r"**\1", text)
+
+
+@lru_cache(maxsize=1)
+def _registry():
+    import pint  # slow to load, and needed for unit texts only
+
+    registry = pint.UnitRegistry(on_redefinition="ignore")
+    for line in TRADE_DEFINITIONS:
+        registry.define(line)
+    registry.define("money = [money]")
+    return registry
+
+
+@lru_cache(maxsize=4096)
+def _parsed(text: str):
+    """pint's unit for a text; every way in which pint refuses a text is one InvalidInput."""
+    import pint
+
+    if not _PERMITTED.fullmatch(_plain(text)):
+        raise InvalidInput(f"'{text[:40]}' is not a unit")
+    try:
+        return _registry().Unit(_plain(text))
+    except Exception as error:  # pint's parser raises many kinds, AttributeError and TokenError among them
+        if isinstance(error, pint.UndefinedUnitError):
+            raise InvalidInput(f"the unit '{text[:40]}' is unknown") from None
+        raise InvalidInput(f"'{text[:40]}' is not a unit") from None
+
+
+#: Letters, digits and the operators of a unit: nothing that a parser could take for code, no huge power.
+_PERMITTED = re.compile(r"(?:[A-Za-zµΩ_]+|[*/() ]|\*\*-?\d\b|1(?=[/ ])|\^-?\d\b){1,60}")
+
+
+@lru_cache(maxsize=4096)
+def _to_base(text: str) -> tuple[float, float]:
+    registry, unit = _registry(), _parsed(text)
+    try:
+        zero = registry.Quantity(0.0, unit).to_base_units().magnitude
+        one = registry.Quantity(1.0, unit).to_base_units().magnitude
+    except Exception:  # offset units inside a product, logarithmic units: nothing a cell can mean
+        raise InvalidInput(f"the unit '{text[:40]}' cannot be converted by a factor") from None
+    return one - zero, zero
+
+
+@lru_cache(maxsize=4096)
+def _dimension(text: str):
+    return _parsed(text).dimensionality
