@@ -101,6 +101,8 @@ class CompiledFunction:
         self.name = record.worksheet_name
         self.count = len(record.arguments)
         self.readers = [_reader(record.worksheet_name, a) for a in record.arguments]
+        self.minimum = record.minimum_cells
+        self.defaults = [a.default for a in record.arguments]
         self.columns = [i for i, a in enumerate(record.arguments) if a.kind in ("column", "labels")]
         single = record.results[0] if record.results and not record.block else None
         self.scale, self.offset = (single.scale, single.offset) if single else (1.0, 0.0)
@@ -111,9 +113,10 @@ class CompiledFunction:
         # A program asks for one cell at a time: numbers are read straight away, ranges are met as an exception.
         try:
             values = [read(cell) for read, cell in zip(self.readers, cells)]
-            if len(cells) != self.count:
-                values += [read(None) for read in self.readers[len(cells):]]
+            given = len(cells)
+            if given != self.count:
                 _check_count(self.record, cells)
+                values += self.defaults[given:] if given >= self.minimum else [read(None) for read in self.readers[given:]]
         except UffuncsError:
             cells = self._completed(cells)
             if any(type(cell) in _RANGES for cell in cells):
@@ -312,7 +315,7 @@ def _column_groups(record: Function, given: dict[int, list]) -> list[list[int]]:
 
 
 def _check_count(record: Function | Tool, cells: Sequence):
-    most = record.maximum_cells
+    most = record.maximum_cells  # None: any number
     if most is not None and len(cells) > most:
         raise InvalidInput(f"{record.worksheet_name}: takes {most} arguments at most, got {len(cells)}")
 
@@ -552,7 +555,7 @@ def split_number(name: str, text: str, unit: str) -> tuple[float, str]:
         raise InvalidInput(f"{name}: {_shown(text)} has a comma; write the number with a decimal point and no other mark")
     if _UNCERTAIN.search(rest):
         raise InvalidInput(f"{name}: {_shown(text)} is an uncertain value; only UF_UNCERTAINTY takes those")
-    if rest[:1].isdigit() or rest[:1] in (".", "'"):
+    if (rest[:1].isdigit() and not rest.startswith("1/")) or rest[:1] in (".", "'"):
         raise InvalidInput(f"{name}: {_shown(text)} is not one number with a unit")
     return float(number), rest
 

@@ -1,0 +1,182 @@
+"""The command line: demo, recalc, functions. Everything heavy is loaded by the command that needs it."""
+
+from __future__ import annotations
+
+import sys
+from pathlib import Path
+from typing import Annotated, Optional
+
+import typer
+
+from .version import __version__
+
+app = typer.Typer(
+    name="uffuncs",
+    help="Ultrafiltration engineering functions for worksheets.",
+    no_args_is_help=True,
+    add_completion=False,
+    pretty_exceptions_enable=False,
+    rich_markup_mode=None,
+)
+
+CLEAN, ERROR_CELLS, UNREADABLE = 0, 1, 2
+
+
+def main() -> None:
+    """Entry point: an error of the file system is one line, never a traceback."""
+    for stream in (sys.stdout, sys.stderr):
+        if hasattr(stream, "reconfigure"):
+            stream.reconfigure(errors="replace")  # a console that cannot show ² or µ shows ? instead
+    try:
+        app()
+    except OSError as error:
+        _fail(f"{error.strerror or error}: {error.filename}" if error.filename else str(error))
+
+
+def _fail(message: str) -> None:
+    print(f"uffuncs: {message}", file=sys.stderr)
+    raise SystemExit(UNREADABLE)
+
+
+def _show_version(wanted: bool) -> None:
+    if wanted:
+        print(f"uffuncs {__version__}")
+        raise typer.Exit()
+
+
+@app.callback()
+def options(
+    version: Annotated[bool, typer.Option("--version", callback=_show_version, is_eager=True, help="Show the version.")] = False,
+) -> None:
+    """Ultrafiltration engineering functions for worksheets."""
+
+
+@app.command()
+def demo(
+    folder: Annotated[Path, typer.Argument(help="Folder for the workbook.")] = Path("uffuncs_demo"),
+    overwrite: Annotated[bool, typer.Option("--overwrite", help="Replace an earlier demo workbook.")] = False,
+) -> None:
+    """Build the design workbook of a plant, recalculate it, and print its key results."""
+    from .demo import build_and_recalculate
+
+    from rich.table import Table
+
+    try:
+        path, results, report = build_and_recalculate(folder, overwrite)
+    except FileExistsError as error:
+        _fail(f"{error.filename} is there already; name another folder, or give --overwrite")
+    table = Table("Result", "Value", "Unit", title=results.title, title_justify="left")
+    table.columns[1].justify = "right"
+    for label, value, unit in results.rows:
+        table.add_row(label, value, unit)
+    console = _console()
+    console.print(table)
+    _print_report(console, report)
+    console.print(f"Workbook: {path}", soft_wrap=True)
+    raise typer.Exit(ERROR_CELLS if report.errors or report.unknown_functions else CLEAN)
+
+
+@app.command()
+def recalc(
+    inputs: Annotated[list[Path], typer.Argument(metavar="IN.xlsx…", help="Workbooks to recalculate.")],
+    output: Annotated[Optional[Path], typer.Option("-o", "--output", help="File, or folder for several workbooks.")] = None,
+    in_place: Annotated[bool, typer.Option("--in-place", help="Write the results into the inputs themselves.")] = False,
+    engine: Annotated[str, typer.Option(help="What evaluates the formulas.")] = "formualizer",
+    most: Annotated[int, typer.Option(help="Error cells listed per workbook.")] = 20,
+) -> None:
+    """Recalculate workbooks without a spreadsheet program.
+
+    Only the cached values change; charts, styles, comments and macros stay as they are, and no macro is run.
+    Exit status: 0 clean, 1 error cells or unknown functions, 2 an input could not be read.
+    """
+    from .headless import UnreadableWorkbook, recalculate
+
+    if in_place == (output is not None):
+        _fail("give either -o OUTPUT or --in-place")
+    if len(inputs) > 1 and output is not None:
+        if output.suffix.lower() in (".xlsx", ".xlsm"):
+            _fail("several workbooks need a folder as output")
+        if double := _same_names(inputs):
+            _fail(f"two inputs would both be written as {double}; recalculate them into different folders")
+    console = _console()
+    status = CLEAN
+    for path in _with_progress(inputs):
+        target = None if in_place else _target(path, output, several=len(inputs) > 1)
+        try:
+            report = recalculate(path, target, in_place=in_place, engine=engine)
+        except UnreadableWorkbook as error:
+            print(f"uffuncs: {error}", file=sys.stderr)
+            status = UNREADABLE
+            continue
+        _print_report(console, report, most)
+        if report.errors or report.unknown_functions:
+            status = max(status, ERROR_CELLS)
+    raise typer.Exit(status)
+
+
+def _same_names(inputs: list[Path]) -> str:
+    seen = set()
+    for path in inputs:
+        if path.name.casefold() in seen:
+            return path.name
+        seen.add(path.name.casefold())
+    return ""
+
+
+def _target(path: Path, output: Path, several: bool) -> Path:
+    if several or output.is_dir() or str(output).endswith(("/", "\\")):
+        output.mkdir(parents=True, exist_ok=True)
+        return output / path.name
+    return output
+
+
+def _with_progress(inputs: list[Path]):
+    """The inputs, with a progress bar on the terminal where there are several."""
+    if len(inputs) == 1 or not sys.stderr.isatty():
+        yield from inputs
+        return
+    from rich.console import Console
+    from rich.progress import track
+
+    yield from track(inputs, description="Recalculating", console=Console(stderr=True))
+
+
+def _console():
+    from rich.console import Console
+
+    console = Console(highlight=False)
+    if not console.is_terminal:
+        console.width = 120  # a file or a pipe has no width; do not break lines at 80
+    return console
+
+
+def _print_report(console, report, most: int = 20) -> None:
+    from .headless import report_lines
+
+    for line in report_lines(report, most):
+        console.print(line, markup=False, soft_wrap=True)
+
+
+@app.command()
+def functions(
+    what: Annotated[str, typer.Argument(metavar="[TOPIC|NAME]", help="A topic, or one function; nothing lists all.")] = "",
+) -> None:
+    """List the worksheet functions, or show one whole: equation, arguments, bounds, source, an example."""
+    from . import reference
+    from .registry import TOPICS, find, near_names
+
+    console = _console()
+    wanted = what.strip()
+    record = find(wanted) or find("UF_" + wanted) if wanted else None
+    if record is not None:
+        reference.show(console, record)
+    elif wanted.casefold() in ("", *TOPICS):
+        reference.show_table(console, wanted.casefold())
+    else:
+        near = [*near_names("UF_" + wanted.upper().removeprefix("UF_")), *near_names(wanted, list(TOPICS))]
+        hint = f"; did you mean {' or '.join(near)}?" if near else f"; topics: {', '.join(TOPICS)}"
+        _fail(f"there is no function or topic '{wanted}'{hint}")
+
+
+if __name__ == "__main__":
+    main()
