@@ -85,12 +85,10 @@ WORKSHEET_UNITS: dict[str, tuple[str, float, float]] = {
 TRADE_DEFINITIONS = (
     "LMH = liter / meter**2 / hour",
     "gfd = gallon / foot**2 / day = _ = GFD",
-    "dalton = gram / mole = Da",  # a molar mass here, never the mass of one molecule
     "gpm = gallon / minute = _ = GPM",
     "gpd = gallon / day = _ = GPD",
     "MGD = 1e6 * gallon / day = _ = mgd",
     "MLD = 1e6 * liter / day",
-    "ppm_by_mass_in_water = milligram / liter",
 )
 
 _PRESSURE = r"(?:k|m|M|h)?(?:Pa|bar|psi|atm)"
@@ -98,6 +96,9 @@ _GAUGE = re.compile(rf"({_PRESSURE})\s*(?:g|\(g\)|gauge)", re.IGNORECASE)
 _ABSOLUTE = re.compile(rf"({_PRESSURE})\s*(?:a|\(a\)|abs|absolute)", re.IGNORECASE)
 _SUPERSCRIPTS = str.maketrans("⁰¹²³⁴⁵⁶⁷⁸⁹⁻", "0123456789-")
 _SUPERSCRIPT_RUN = re.compile(r"⁻?[⁰¹²³⁴⁵⁶⁷⁸⁹]+")
+#: Spellings that pint takes for something else. A dalton is a molar mass here, never the mass of one molecule.
+_OTHERWISE = {"Da": "(g/mol)", "kDa": "(kg/mol)", "MDa": "(Mg/mol)", "mil": "thou", "Å": "angstrom", "\u212b": "angstrom"}
+_OTHERWISE_FOUND = re.compile(r"\b[kM]?Da\b|\bmil\b|[Å\u212b]")
 _PLAIN_EXPONENT = re.compile(r"(?<=[A-Za-zµ°])(-?\d)(?![\dA-Za-z])")
 
 
@@ -183,6 +184,7 @@ def _plain(text: str) -> str:
     if text in ("", "-", "–"):
         return "dimensionless"
     text = text.replace("μ", "µ").replace("°C difference", "delta_degC").replace("°", "deg").replace("%", "percent")
+    text = _OTHERWISE_FOUND.sub(lambda m: _OTHERWISE[m[0]], text)
     text = _SUPERSCRIPT_RUN.sub(lambda m: f"**{m[0].translate(_SUPERSCRIPTS)}", text)
     text = text.replace("·", "*").replace("×", "*").replace("−", "-")
     return _PLAIN_EXPONENT.sub(r"**\1", text)
@@ -222,8 +224,9 @@ _PERMITTED = re.compile(r"(?:[A-Za-zµΩ_]+|[*/() ]|\*\*-?\d\b|1(?=[/ ])|\^-?\d\
 def _to_base(text: str) -> tuple[float, float]:
     registry, unit = _registry(), _parsed(text)
     try:
-        zero = registry.Quantity(0.0, unit).to_base_units().magnitude
-        one = registry.Quantity(1.0, unit).to_base_units().magnitude
+        zero, one, two = (registry.Quantity(x, unit).to_base_units().magnitude for x in (0.0, 1.0, 2.0))
+        if abs(two - 2 * one + zero) > 1e-9 * abs(two):
+            raise ValueError("not linear")
     except Exception:  # offset units inside a product, logarithmic units: nothing a cell can mean
         raise InvalidInput(f"the unit '{text[:40]}' cannot be converted by a factor") from None
     return one - zero, zero

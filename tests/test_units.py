@@ -1,0 +1,84 @@
+"""Units: the table of worksheet units against pint, trade units against exact definitions, and what is refused."""
+
+import pytest
+
+from uffuncs.cell import call
+from uffuncs.errors import InvalidInput
+from uffuncs.units import WORKSHEET_UNITS, _to_base, compile_unit, convert
+
+GALLON, FOOT, INCH, POUND_FORCE, DAY = 3.785411784e-3, 0.3048, 0.0254, 4.4482216152605, 86400.0  # exact by definition
+PSI = POUND_FORCE / INCH**2
+
+# Exponents that stand for a number given elsewhere, and words: nothing that pint can read.
+NOT_FOR_PINT = {u for u in WORKSHEET_UNITS if "ⁿ" in u} | {"g/g", "min/day", "h/day", "g·h/(L·year)", "%/min"}
+
+
+@pytest.mark.parametrize("unit", sorted(set(WORKSHEET_UNITS) - NOT_FOR_PINT))
+def test_worksheet_unit_is_what_pint_makes_of_it(unit):
+    si, scale, offset = WORKSHEET_UNITS[unit]
+    pint_scale, pint_offset = _to_base(unit)
+    assert scale == pytest.approx(pint_scale / _to_base(si)[0], rel=1e-12)
+    assert offset == pytest.approx(pint_offset, abs=1e-9)
+
+
+@pytest.mark.parametrize("unit, si, scale", [
+    ("psi", "Pa", PSI), ("psig", "Pa", PSI), ("barg", "Pa", 1e5), ("bar(g)", "Pa", 1e5), ("kPa", "Pa", 1e3), ("mmHg", "Pa", 133.322387415),
+    ("atm", "Pa", 101325.0), ("gfd", "m/s", GALLON / FOOT**2 / DAY), ("GFD", "m/s", GALLON / FOOT**2 / DAY),
+    ("LMH", "m/s", 1e-3 / 3600), ("L/m2/h", "m/s", 1e-3 / 3600), ("L m-2 h-1", "m/s", 1e-3 / 3600), ("L·m⁻²·h⁻¹", "m/s", 1e-3 / 3600),
+    ("gfd/psi", "m/(s·Pa)", GALLON / FOOT**2 / DAY / PSI), ("LMH/bar", "m/(s·Pa)", 1e-8 / 3600),
+    ("cP", "Pa·s", 1e-3), ("P", "Pa·s", 0.1), ("gpm", "m³/s", GALLON / 60), ("MGD", "m³/s", 1e6 * GALLON / DAY), ("MLD", "m³/s", 1e3 / DAY),
+    ("m3/h", "m³/s", 1 / 3600), ("L/min", "m³/s", 1e-3 / 60), ("kDa", "kg/mol", 1.0), ("Da", "kg/mol", 1e-3), ("g/mol", "kg/mol", 1e-3),
+    ("mg/L", "kg/m³", 1e-3), ("g/dL", "kg/m³", 10.0), ("%", "-", 0.01), ("ft²", "m²", FOOT**2), ("ft2", "m²", FOOT**2), ("mil", "m", 25.4e-6), ("MDa", "kg/mol", 1e3),
+    ("dyn/cm", "N/m", 1e-3), ("cm²/s", "m²/s", 1e-4), ("μm", "m", 1e-6), ("µm", "m", 1e-6), ("Å", "m", 1e-10), ("psi/min", "Pa/s", PSI / 60),
+    ("atm/(g/L)^2", "Pa·m⁶/kg²", 101325.0), ("in", "m", INCH), ("L", "m³", 1e-3), ("gal", "m³", GALLON), ("day", "s", DAY), ("hp", "W", 745.69987158227022),
+])
+def test_trade_unit(unit, si, scale):
+    found, offset = compile_unit(unit, si)
+    assert found == pytest.approx(scale, rel=1e-12) and offset == 0
+
+
+@pytest.mark.parametrize("text, kelvin", [("degF", 459.67 * 5 / 9), ("°F", 459.67 * 5 / 9), ("F", 459.67 * 5 / 9), ("C", 273.15), ("degC", 273.15), ("K", 0)])
+def test_temperature_units_have_a_zero_point(text, kelvin):
+    scale, offset = compile_unit(text, "K")
+    assert scale == pytest.approx(5 / 9 if "F" in text else 1) and offset == pytest.approx(kelvin)
+
+
+@pytest.mark.parametrize("unit, si", [
+    ("m", "Pa"), ("bara", "Pa"), ("psia", "Pa"), ("psi absolute", "Pa"), ("furlongz", "m"), ("", "Pa"), ("bar bar", "Pa"), ("L", "m³/s"),
+    ("gfd", "m/(s·Pa)"), ("degC", "Pa"), ("__import__('os')", "Pa"), ("m**999999", "m"), ("bar; import os", "Pa"), ("9**9**9", "-"),
+    ("(((((", "m"), ("dB", "-"), ("kg", "m"), ("lambda", "-"), ("a" * 500, "m"), ("bar\n", "m"), ("degC/m", "K"),
+])
+def test_a_unit_that_does_not_fit_is_refused(unit, si):
+    with pytest.raises(InvalidInput):
+        compile_unit(unit, si)
+
+
+@pytest.mark.parametrize("unit", ["psig", "barg", "bar(g)"])
+def test_an_absolute_pressure_takes_no_gauge_unit(unit):
+    with pytest.raises(InvalidInput, match="gauge"):
+        compile_unit(unit, "Pa", absolute=True)
+    assert compile_unit("psia", "Pa", absolute=True)[0] == pytest.approx(PSI)
+
+
+def test_convert_cell():
+    assert call("UF_CONVERT", [1, "gfd", "LMH"]) == pytest.approx(1.6977430556, rel=1e-10)
+    assert call("UF_CONVERT", [1, "gfd/psi", "LMH/bar"]) == pytest.approx(24.6236812025, rel=1e-11)
+    assert call("UF_CONVERT", [77, "degF", "degC"]) == 25
+    assert call("UF_CONVERT", [-40, "degC", "degF"]) == -40
+    assert call("UF_CONVERT", ["1", "gpm", "m3/h"]) == pytest.approx(0.22712470704, rel=1e-12)
+    assert call("UF_CONVERT", [85, "%", "-"]) == pytest.approx(0.85)
+    assert call("UF_CONVERT", [[[1], [None], [True]], "bar", "psi"])[0][0] == pytest.approx(1e5 / PSI)
+
+
+@pytest.mark.parametrize("cells, word", [
+    ([1, "bar", "m"], "different"), ([1, "bara", "barg"], "atmospheric"), ([1, "barx", "bar"], "unknown"), ([None, "bar", "bar"], "blank"),
+    ([True, "bar", "bar"], "TRUE"), (["1 bar", "bar", "psi"], "unit"), ([1, 5, "bar"], "text"), ([1, "bar", None], "blank"),
+])
+def test_convert_refuses(cells, word, why):
+    assert call("UF_CONVERT", cells).code == "#VALUE!"
+    assert word in why("UF_CONVERT", *cells)
+
+
+def test_convert_is_its_own_inverse():
+    for pair in [("degF", "degC"), ("gfd", "LMH"), ("kDa", "g/mol"), ("MGD", "m³/h"), ("psi", "bar")]:
+        assert convert(convert(12.5, *pair), *reversed(pair)) == pytest.approx(12.5, rel=1e-9)
