@@ -4,8 +4,6 @@ from __future__ import annotations
 
 from dataclasses import replace
 
-import numpy as np
-
 from ..declaration import Number, Rule, worksheet_function
 from ..quantities import quantity
 from .water import ROOM_TEMPERATURE, TEMPERATURE_RULES, WATER_VISCOSITY_20, viscosity_ratio
@@ -203,8 +201,8 @@ def resistance_steps(
     """
     clean, fouled, rinsed, cleaned = (
         resistance_total(j, transmembrane_pressure, viscosity) for j in (clean_flux, fouled_flux, rinsed_flux, cleaned_flux))
-    parts = np.array([clean, fouled - rinsed, rinsed - cleaned, cleaned - clean])
-    return parts, parts / fouled
+    parts = [clean, fouled - rinsed, rinsed - cleaned, cleaned - clean]
+    return parts, [part / fouled for part in parts]
 
 
 @worksheet_function(

@@ -1,0 +1,216 @@
+"""What holds for every function of the registry, whatever it computes. The arguments are those of its first published value."""
+
+from __future__ import annotations
+
+import math
+import sys
+
+import numpy as np
+import pytest
+
+from tests.compare import same
+from uffuncs.cell import call, compile_function
+from uffuncs.check_values import checks_of
+from uffuncs.declaration import Function
+from uffuncs.errors import ErrorValue
+from uffuncs.registry import functions
+
+FUNCTIONS = [r for r in functions().values() if isinstance(r, Function)]
+ELEMENTWISE = [r for r in FUNCTIONS if r.elementwise]
+NUMERIC = [(r, a) for r in FUNCTIONS for a in r.arguments if a.kind == "number"]
+
+
+def by_name(record):
+    return record.worksheet_name
+
+
+def by_argument(pair):
+    return pair.name if hasattr(pair, "name") else pair.worksheet_name
+
+
+def example(record: Function) -> list:
+    """Cells of a call that gives a result: numbers in worksheet units, one for each argument."""
+    for check in checks_of(record.worksheet_name):
+        cells = [*check.cells, *[None] * (len(record.arguments) - len(check.cells))]
+        if not isinstance(call(record.worksheet_name, cells), ErrorValue):
+            return [_number(record, i, c) for i, c in enumerate(cells)]
+    raise AssertionError(f"{record.worksheet_name} has no published value with a result")
+
+
+def _number(record: Function, i: int, cell):
+    argument = record.arguments[i]
+    if argument.kind != "number" or cell is None:
+        return cell
+    value = argument.quantity.from_si(compile_function(record.worksheet_name).readers[i](cell))
+    return float(f"{value:.13g}")
+
+
+def given_numbers(record: Function, cells: list) -> list[int]:
+    return [i for i, a in enumerate(record.arguments) if a.kind == "number" and cells[i] is not None]
+
+
+@pytest.mark.parametrize("record", ELEMENTWISE, ids=by_name)
+def test_ranges_equal_the_scalar_loop(record):
+    cells = example(record)
+    numbers = [i for i in given_numbers(record, cells) if not record.arguments[i].quantity.whole]
+    factors = [(1 + 0.003 * math.sin(7 * r + 3 * i)) for r in range(5) for i in range(len(cells))]
+    rows = []
+    for r in range(5):
+        row = list(cells)
+        for i in numbers:
+            row[i] = _inside(record.arguments[i].quantity, cells[i] * factors[r * len(cells) + i])
+        rows.append(row)
+    block = call(record.worksheet_name, [[[row[i]] for row in rows] if i in numbers else cells[i] for i in range(len(cells))])
+    if not numbers:
+        return
+    loop = [[call(record.worksheet_name, row)] for row in rows]
+    assert same(block, loop, 1e-10), (block, loop)
+    assert any(isinstance(row[0], float) for row in block)
+
+
+def _inside(quantity, value):
+    return min(max(value, quantity.low), quantity.high)
+
+
+@pytest.mark.parametrize("record", ELEMENTWISE, ids=by_name)
+def test_broadcasting_like_numpy(record):
+    cells = example(record)
+    numbers = given_numbers(record, cells)
+    if len(numbers) < 2:
+        return
+    expected = call(record.worksheet_name, cells)
+    i, j = numbers[:2]
+    grid = list(cells)
+    grid[i], grid[j] = [[cells[i]]] * 3, [[cells[j]] * 2]
+    block = call(record.worksheet_name, grid)
+    assert len(block) == 3 and all(len(row) == 2 for row in block)
+    assert all(same(v, expected, 1e-10) for row in block for v in row)
+
+
+@pytest.mark.parametrize("record", ELEMENTWISE, ids=by_name)
+def test_the_python_function_takes_arrays(record):
+    cells = example(record)
+    compiled = compile_function(record.worksheet_name)
+    if compiled.columns:
+        return
+    values = [read(c) for read, c in zip(compiled.readers, cells)]
+    numbers = given_numbers(record, cells)
+    if not numbers:
+        return
+    scalar = record.python(*values)
+    array = record.python(*[np.full((2, 3), v) if i in numbers else v for i, v in enumerate(values)])
+    assert np.shape(array) == (2, 3)
+    assert np.allclose(array, scalar, rtol=1e-10, atol=0)
+
+
+@pytest.mark.parametrize("record, argument", NUMERIC, ids=by_argument)
+def test_each_bound_is_refused_with_its_reason(record, argument):
+    cells = example(record)
+    i = record.argument_names.index(argument.name)
+    q = argument.quantity
+    for outside in (q.low - 0.01 * max(abs(q.low), 1e-9) - (1 if q.whole else 0), q.high * 1.01 + (1 if q.whole else 0)):
+        result = call(record.worksheet_name, [*cells[:i], outside, *cells[i + 1:]])
+        assert isinstance(result, ErrorValue) and result.code == "#NUM!", (outside, result)
+        assert argument.name in result.reason and f"{q.low:g} to {q.high:g}" in result.reason
+
+
+@pytest.mark.parametrize("record, argument", NUMERIC, ids=by_argument)
+def test_cells_that_are_no_numbers(record, argument):
+    cells = example(record)
+    i = record.argument_names.index(argument.name)
+    if argument.required:
+        assert call(record.worksheet_name, [*cells[:i], None, *cells[i + 1:]]).code == "#VALUE!"
+        assert "blank" in call(record.worksheet_name, [*cells[:i], "", *cells[i + 1:]]).reason
+    for bad, code in ((True, "#VALUE!"), ("some text", "#VALUE!"), ("2,5", "#VALUE!"), ("1 lightyear**2/fortnight", "#VALUE!"),
+                      (float("nan"), "#NUM!"), (ErrorValue("#DIV/0!"), "#DIV/0!"), (ErrorValue("#N/A"), "#N/A")):
+        result = call(record.worksheet_name, [*cells[:i], bad, *cells[i + 1:]])
+        assert isinstance(result, ErrorValue) and result.code == code, (bad, result)
+        assert argument.name in result.reason or isinstance(bad, ErrorValue)
+
+
+@pytest.mark.parametrize("record, argument", NUMERIC, ids=by_argument)
+def test_a_text_in_the_worksheet_unit_is_the_number(record, argument):
+    cells = example(record)
+    i = record.argument_names.index(argument.name)
+    if cells[i] is None:
+        return
+    expected = call(record.worksheet_name, cells)
+    for text in (f"{cells[i]!r} {argument.unit}" if argument.unit != "-" else f"{cells[i]!r}", f"  {cells[i]!r}"):
+        assert same(call(record.worksheet_name, [*cells[:i], text, *cells[i + 1:]]), expected, 1e-10), text
+
+
+@pytest.mark.parametrize("record", FUNCTIONS, ids=by_name)
+def test_omitted_blank_and_empty_are_one(record):
+    cells = example(record)
+    expected = call(record.worksheet_name, cells)
+    given = len(cells)
+    while given and cells[given - 1] is None:
+        given -= 1
+    assert same(call(record.worksheet_name, cells[:given]), expected)
+    assert same(call(record.worksheet_name, ["" if c is None else c for c in cells]), expected)
+
+
+@pytest.mark.parametrize("record", FUNCTIONS, ids=by_name)
+def test_too_many_arguments(record):
+    result = call(record.worksheet_name, [*example(record), 1.0])
+    assert result.code == "#VALUE!" and "arguments at most" in result.reason
+
+
+@pytest.mark.parametrize("record", FUNCTIONS, ids=by_name)
+def test_why_answers_with_text(record):
+    answer = call("UF_WHY", [record.worksheet_name, *example(record)])
+    assert isinstance(answer, str) and answer.startswith(("ok", "caution: ")), answer
+    refused = call("UF_WHY", [record.worksheet_name])
+    assert record.worksheet_name in refused if record.minimum_cells else True
+
+
+@pytest.mark.parametrize("record", FUNCTIONS, ids=by_name)
+def test_source_and_arguments(record):
+    source = call("UF_SOURCE", [record.worksheet_name])
+    assert record.equation in source and record.source in source
+    rows = call("UF_ARGUMENTS", [record.worksheet_name])
+    assert [row[0] for row in rows] == list(record.argument_names) and all(len(row) == 6 for row in rows)
+
+
+# --- dimensions: bodies run on quantities with units ---------------------------------------------------------------
+
+CONSTANTS = {"GAS_CONSTANT": "J/(mol·K)", "BOLTZMANN_CONSTANT": "J/K", "AVOGADRO_CONSTANT": "1/mol", "STANDARD_ATMOSPHERE": "Pa"}
+#: Correlations in units of their own: within other bodies they take and give what they declare.
+CORRELATIONS = {r.python: r for r in FUNCTIONS if r.dimensional and not r.block and not r.result_by}
+
+
+@pytest.mark.parametrize("record", [r for r in FUNCTIONS if not r.dimensional and not r.result_by], ids=by_name)
+def test_dimensions(record, monkeypatch):
+    """A body run on pint quantities gives the unit that its declaration says."""
+    from uffuncs.units import _plain, _registry
+
+    registry = _registry()
+
+    def with_unit(value, si_unit):
+        return registry.Quantity(value, _plain(si_unit.replace("ⁿ", "")))
+
+    module = sys.modules[record.python.__module__]
+    for name, unit in CONSTANTS.items():
+        if hasattr(module, name):
+            monkeypatch.setattr(module, name, with_unit(getattr(module, name), unit))
+    for name, correlation in [(n, f) for n, f in vars(module).items() if callable(f) and f in CORRELATIONS and f is not record.python]:
+        monkeypatch.setattr(module, name, lambda *values, f=correlation: with_unit(
+            f(*(getattr(v, "magnitude", v) for v in values)), CORRELATIONS[f].results[0].si_unit))
+    compiled = compile_function(record.worksheet_name)
+    cells = example(record)
+    columns = compiled._read_columns(compiled._completed(cells)) if compiled.columns else {}
+    values = [columns[i] if i in columns else read(c) for i, (read, c) in enumerate(zip(compiled.readers, cells))]
+    quantities = [with_unit(v, a.quantity.si_unit) if a.quantity is not None and v is not None else v
+                  for a, v in zip(record.arguments, values)]
+    results = record.python(*quantities)
+    for q, result in zip(record.results, results if record.block else [results]):
+        unit = registry.Unit(_plain(q.si_unit))
+        for value in result if isinstance(result, list) else [result]:
+            found = registry.Quantity(1, getattr(value, "units", "dimensionless"))
+            assert found.is_compatible_with(unit), (q.name, value)
+            assert np.all(np.isfinite(np.asarray(getattr(value, "magnitude", value))))
+
+
+@pytest.mark.parametrize("record", [r for r in FUNCTIONS if r.dimensional], ids=by_name)
+def test_why_a_body_is_not_run_on_quantities_is_said(record):
+    assert len(record.dimensional) > 10
