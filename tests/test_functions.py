@@ -9,14 +9,10 @@ import numpy as np
 import pytest
 
 from tests.compare import same
+from tests.examples import ELEMENTWISE, FUNCTIONS, example, given_numbers
 from uffuncs.cell import call, compile_function
-from uffuncs.check_values import checks_of
-from uffuncs.declaration import Function
 from uffuncs.errors import ErrorValue
-from uffuncs.registry import functions
 
-FUNCTIONS = [r for r in functions().values() if isinstance(r, Function)]
-ELEMENTWISE = [r for r in FUNCTIONS if r.elementwise]
 NUMERIC = [(r, a) for r in FUNCTIONS for a in r.arguments if a.kind == "number"]
 
 
@@ -26,27 +22,6 @@ def by_name(record):
 
 def by_argument(pair):
     return pair.name if hasattr(pair, "name") else pair.worksheet_name
-
-
-def example(record: Function) -> list:
-    """Cells of a call that gives a result: numbers in worksheet units, one for each argument."""
-    for check in checks_of(record.worksheet_name):
-        cells = [*check.cells, *[None] * (len(record.arguments) - len(check.cells))]
-        if not isinstance(call(record.worksheet_name, cells), ErrorValue):
-            return [_number(record, i, c) for i, c in enumerate(cells)]
-    raise AssertionError(f"{record.worksheet_name} has no published value with a result")
-
-
-def _number(record: Function, i: int, cell):
-    argument = record.arguments[i]
-    if argument.kind != "number" or cell is None:
-        return cell
-    value = argument.quantity.from_si(compile_function(record.worksheet_name).readers[i](cell))
-    return float(f"{value:.13g}")
-
-
-def given_numbers(record: Function, cells: list) -> list[int]:
-    return [i for i, a in enumerate(record.arguments) if a.kind == "number" and cells[i] is not None]
 
 
 @pytest.mark.parametrize("record", ELEMENTWISE, ids=by_name)

@@ -89,7 +89,12 @@ class CompiledTool:
             if argument.required and is_blank(cell):
                 raise InvalidInput(f"{record.worksheet_name}: {argument.name} is blank")
         given = [a.default if is_blank(c) and not a.required else c for a, c in zip(record.arguments, cells)]
-        return sanitized(record.python(*given, *cells[len(given):]))
+        try:
+            return sanitized(record.python(*given, *cells[len(given):]), record.worksheet_name)
+        except CellError:
+            raise
+        except UffuncsError as error:
+            raise type(error)(f"{record.worksheet_name}: {error}") from None
 
 
 class CompiledFunction:
@@ -100,7 +105,7 @@ class CompiledFunction:
         self.body = record.python
         self.name = record.worksheet_name
         self.count = len(record.arguments)
-        self.readers = [_reader(record.worksheet_name, a) for a in record.arguments]
+        self.readers = [make_reader(record.worksheet_name, a) for a in record.arguments]
         self.minimum = record.minimum_cells
         self.defaults = [a.default for a in record.arguments]
         self.columns = [i for i, a in enumerate(record.arguments) if a.kind in ("column", "labels")]
@@ -146,6 +151,12 @@ class CompiledFunction:
         if not math.isfinite(result):
             raise NoResult(no_result_reason(self.record, values))
         return result
+
+    def si_values(self, cells: Sequence) -> list:
+        """The arguments of a call in SI, ranges of whole columns as arrays."""
+        cells = self._completed(cells)
+        columns = self._read_columns(cells) if self.columns else {}
+        return [columns[i] if i in columns else read(cell) for i, (read, cell) in enumerate(zip(self.readers, cells))]
 
     # --- ranges, element by element ------------------------------------------------------------------------------
 
@@ -447,7 +458,7 @@ def _outside(read: Callable, numbers: np.ndarray, q: Quantity) -> dict[tuple[int
 # --- readers: one cell to one SI value ------------------------------------------------------------------------------
 
 
-def _reader(function: str, argument: Argument) -> Callable:
+def make_reader(function: str, argument: Argument) -> Callable:
     """A function from a cell value to the argument's SI value (or text); raises UffuncsError."""
     if argument.kind in ("choice", "name", "labels"):
         return _text_reader(function, argument)
@@ -567,11 +578,13 @@ def _shown(cell: object) -> str:
     return f"{cell:.12g}" if isinstance(cell, float) else str(cell)
 
 
-def sanitized(value: object) -> object:
-    """A tool's result as a cell may hold it."""
+def sanitized(value: object, name: str) -> object:
+    """A tool's result as a cell may hold it; reasons name the tool."""
     if isinstance(value, (list, tuple)):
-        return [[sanitized(v) for v in row] for row in value]
-    if isinstance(value, (str, ErrorValue)):
+        return [[sanitized(v, name) for v in row] for row in value]
+    if isinstance(value, ErrorValue):
+        return value if not value.reason or value.reason.startswith("UF_") else ErrorValue(value.code, f"{name}: {value.reason}")
+    if isinstance(value, str):
         return value
     number = float(value)
-    return number if math.isfinite(number) else ErrorValue("#NUM!", "no finite result")
+    return number if math.isfinite(number) else ErrorValue("#NUM!", f"{name}: no finite result")

@@ -169,6 +169,8 @@ class Tool:
     variadic: bool  # further cells may follow the arguments
     result_text: str
     block: bool
+    elementwise: bool  # over ranges among its own arguments
+    caution: Callable[..., str] | None  # what UF_WHY cautions of, for the same cells
     summary: str
     notes: str
     equation: str
@@ -181,10 +183,6 @@ class Tool:
     @property
     def maximum_cells(self) -> int | None:
         return None if self.variadic else len(self.arguments)
-
-    @property
-    def elementwise(self) -> bool:
-        return False
 
     @property
     def result_unit(self) -> str:
@@ -360,6 +358,8 @@ def cell_tool(
     topic: str = "tools",
     variadic: bool = False,
     block: bool = False,
+    elementwise: bool = False,
+    caution: Callable[..., str] | None = None,
 ):
     """Record a function on cells as they are, `uf_name` in Python; `arguments` are (name, meaning) or (name, meaning, default)."""
 
@@ -372,7 +372,8 @@ def cell_tool(
             Argument(a[0], "cell", None, (), *((a[2], str(a[2]) or '""') if len(a) > 2 else (REQUIRED, "")), meaning=a[1])
             for a in arguments
         )
-        DECLARED[name] = Tool(function, name, topic, built, variadic, result, block, summary, notes.strip(), equation, source)
+        DECLARED[name] = Tool(function, name, topic, built, variadic, result, block, elementwise, caution,
+                              summary, notes.strip(), equation, source)
         return function
 
     return register

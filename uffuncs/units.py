@@ -165,6 +165,20 @@ def convert(value: float, from_unit: str, to_unit: str) -> float:
     return round(result, 9) if offset_in or offset_out else result
 
 
+def known_unit(text: str) -> None:
+    """Refuse what is no unit.
+
+    Raises
+    ------
+    InvalidInput
+        An unknown unit.
+    """
+    text = text.strip()
+    if text not in WORKSHEET_UNITS:
+        pressure = _GAUGE.fullmatch(text) or _ABSOLUTE.fullmatch(text)
+        _to_base(pressure[1] if pressure else text)
+
+
 def _pressure_reference(text: str, absolute: bool) -> str:
     gauge, is_absolute = _GAUGE.fullmatch(text), _ABSOLUTE.fullmatch(text)
     if absolute and gauge:
