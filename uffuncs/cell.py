@@ -298,12 +298,13 @@ class CompiledFunction:
         except UffuncsError as error:
             raise type(error)(f"{self.name}: {error}") from None
         rows = max(len(c) if isinstance(c, _RANGES) else 1 for c in columns)
+        quantities = self.record.column_quantities(values)
         block = []
         for r in range(rows):
             row = []
-            # More columns than declared repeat the last entry: a fit with a number of coefficients, say.
+            # More columns than declared repeat the last entry.
             for n, column in enumerate(columns):
-                q = self.record.results[min(n, len(self.record.results) - 1)]
+                q = quantities[min(n, len(quantities) - 1)]
                 value = column[r] if isinstance(column, _RANGES) else column
                 row.append(value if isinstance(value, str) else _finite_or_error(q.from_si(float(value)), self.name))
             block.append(row)

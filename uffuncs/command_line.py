@@ -56,7 +56,7 @@ def demo(
     folder: Annotated[Path, typer.Argument(help="Folder for the workbook.")] = Path("uffuncs_demo"),
     overwrite: Annotated[bool, typer.Option("--overwrite", help="Replace an earlier demo workbook.")] = False,
 ) -> None:
-    """Build the design workbook of a plant, recalculate it, and print its key results."""
+    """Build a plant's design workbook and print its key results."""
     from .demo import build_and_recalculate
 
     from rich.table import Table
@@ -160,11 +160,18 @@ def _print_report(console, report, most: int = 20) -> None:
 @app.command()
 def functions(
     what: Annotated[str, typer.Argument(metavar="[TOPIC|NAME]", help="A topic, or one function; nothing lists all.")] = "",
+    markdown: Annotated[bool, typer.Option("--markdown", help="The whole reference as one Markdown page.")] = False,
 ) -> None:
-    """List the worksheet functions, or show one whole: equation, arguments, bounds, source, an example."""
+    """List the worksheet functions, or show one whole.
+
+    Equation, arguments with units and bounds, source, an example formula, a published value.
+    """
     from . import reference
     from .registry import TOPICS, find, near_names
 
+    if markdown:
+        print(reference.markdown())
+        return
     console = _console()
     wanted = what.strip()
     record = find(wanted) or find("UF_" + wanted) if wanted else None

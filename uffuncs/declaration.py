@@ -77,10 +77,14 @@ class Argument:
 
 @dataclass(frozen=True)
 class Rule:
-    """A condition on arguments by name (and on `result`), and the text for it; `{name}` is the value with its unit."""
+    """A condition on arguments by name (and on `result`), and the text for it; `{name}` is the value with its unit.
+
+    `told` works out, from arguments by name, the words for the case at hand; `text` is then what the reference says.
+    """
 
     when: Callable[..., bool]
     text: str
+    told: Callable[..., str] | None = None
     names: tuple[str, ...] = field(init=False)
 
     def __post_init__(self):
@@ -122,6 +126,7 @@ class Function:
     remarks: tuple[Rule, ...]
     fitted: tuple[Fitted, ...]
     dimensional: str  # "" where the body is dimensionally sound as it stands, else why it is not
+    columns: Callable[..., Sequence[int]] | None = None  # which of the results there are, from arguments by name
 
     @property
     def minimum_cells(self) -> int:
@@ -147,6 +152,13 @@ class Function:
             return self.results[0]
         name, quantities = self.result_by
         return quantities[values[self.argument_names.index(name)]]
+
+    def column_quantities(self, values: Sequence) -> tuple[Quantity, ...]:
+        """The quantities of a block's columns, given the arguments' SI values."""
+        if self.columns is None:
+            return self.results
+        named = dict(zip(self.argument_names, values))
+        return tuple(self.results[i] for i in self.columns(*map(named.get, inspect.signature(self.columns).parameters)))
 
     @property
     def argument_names(self) -> tuple[str, ...]:
@@ -208,6 +220,7 @@ def worksheet_function(
     source: str,
     result: str | Quantity = "",
     results: Sequence[str | Quantity] = (),
+    columns: Callable[..., Sequence[int]] | None = None,
     result_by: tuple[str, Mapping[str, str]] | None = None,
     arguments: Mapping[str, Quantity | str] | None = None,
     choices: Mapping[str, Sequence[str]] | None = None,
@@ -231,6 +244,8 @@ def worksheet_function(
     results : sequence of str or Quantity
         The columns of a block; the function then returns one sequence (or number) per column, and its `Number` arguments
         take single cells.
+    columns : callable
+        Where an argument decides which of the results there are: their places, from arguments by name.
     result_by : (argument, {choice: entry})
         Where a text argument decides what the result is.
     arguments : mapping
@@ -272,7 +287,7 @@ def worksheet_function(
                 raise wrong(f"'{given}' is not in the vocabulary (quantities.py)")
             return VOCABULARY[given]
 
-        columns = tuple(map(entry, results or ([result] if result else [])))
+        quantities = tuple(map(entry, results or ([result] if result else [])))
         by = result_by and (result_by[0], {choice: entry(q) for choice, q in result_by[1].items()})
         special = {"arguments": arguments or {}, "choices": choices or {}, "names": names or {},
                    "default_texts": default_texts or {}, "groups": groups or {}}
@@ -295,8 +310,9 @@ def worksheet_function(
                 raise wrong(f"the fitted range of '{f.name}' needs an argument of that name, or a value")
 
         record = Function(
-            function, name, _topic(function), built, columns, by, bool(results), summary,
+            function, name, _topic(function), built, quantities, by, bool(results), summary,
             notes.strip(), equation, source, tuple(refuses), tuple(cautions), tuple(remarks), tuple(fitted), dimensional,
+            columns,
         )
         DECLARED[name] = record
         function.__doc__ = docstring(record)
@@ -406,14 +422,14 @@ def docstring(record: Function) -> str:
         lines += [f"{q.name} : float or array, of the arguments broadcast together",
                   f"    {q.meaning}. [{q.si_unit}; worksheet: {q.unit}]"]
     lines += ["", "Raises", "------", "UffuncsError", "    At the worksheet: an argument of the wrong kind or outside its bounds."]
-    lines += [f"    {_plain_rule(rule.text)}." for rule in record.refuses]
-    limits = [*(_plain_rule(rule.text) for rule in record.cautions), *(fitted_text(record, f) for f in record.fitted)]
+    lines += [f"    {plain_rule(rule.text)}." for rule in record.refuses]
+    limits = [*(plain_rule(rule.text) for rule in record.cautions), *(fitted_text(record, f) for f in record.fitted)]
     if limits:
         lines += ["", "Cautions", "--------", *(f"{text}." for text in limits)]
     return "\n".join([*lines, "", "References", "----------", record.source])
 
 
-def _plain_rule(text: str) -> str:
+def plain_rule(text: str) -> str:
     return text.replace("{", "").replace("}", "").rstrip(".")
 
 

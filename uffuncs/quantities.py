@@ -174,6 +174,7 @@ _define("feed_pressure", "p_f", "bar", -1.1, 200, "Pressure at the feed inlet, g
 _define("retentate_pressure", "p_r", "bar", -1.1, 200, "Pressure at the retentate outlet, gauge")
 _define("permeate_pressure", "p_p", "bar", -1.1, 200, "Pressure on the permeate side, gauge; suction is negative")
 _define("pressure_limit", "Δp_max", "bar", 1e-4, 200, "Highest transmembrane pressure allowed")
+_define("critical_pressure", "p_c", "bar", 0, 1e8, "Transmembrane pressure that pushes a droplet into a pore")
 _define("pressure_drop", "Δp", "bar", 0, 1e4, "Pressure loss along the channel")
 _define("pressure_rise", "Δp", "bar", 0, 1000, "Pressure rise over the pump")
 _define("feed_pressure_rise", "Δp_f", "bar", 0, 1000, "Pressure rise over the feed pump")
@@ -309,6 +310,8 @@ _define("loading", "m/A", "g/m²", 0, 1e9, "Mass per membrane area")
 
 # --- plant, energy, money ---------------------------------------------------------------------------------------
 _define("stages", "n", "-", 1, 50, "Number of stages in series", whole=True)
+_define("stage", "i", "-", 1, 1000, "Number of the stage, from the feed", whole=True)
+_define("component_number", "j", "-", 1, 10000, "Row number of the component", whole=True)
 _define("availability", "a", "-", 0.01, 1, "Share of calendar time in service")
 _define("recovery", "Q_p/Q_f", "-", 0, 1, "Permeate over feed flow")
 _define("ratio", "r", "-", 0, 1e9, "Ratio")

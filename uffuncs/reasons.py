@@ -12,7 +12,7 @@ def no_result_reason(record: Function, values: Sequence) -> str:
     """Why sound arguments (in SI) gave no finite result."""
     for rule in record.refuses:
         if _holds(rule.when, rule.names, record, values, None):
-            return f"{record.worksheet_name}: {_filled(rule.text, record, values, None)}"
+            return f"{record.worksheet_name}: {_told(rule, record, values, None)}"
     zeros = [a.name for a, v in zip(record.arguments, values) if a.kind == "number" and v is not None and v == 0]
     cause = f"; {', '.join(zeros)} {'is' if len(zeros) == 1 else 'are'} 0" if zeros else ""
     return f"{record.worksheet_name}: no finite result, by a division by zero or a number too large{cause}"
@@ -20,7 +20,7 @@ def no_result_reason(record: Function, values: Sequence) -> str:
 
 def cautions(record: Function, values: Sequence, result: object = None) -> list[str]:
     """What to be careful with, for arguments and result in SI."""
-    found = [_filled(rule.text, record, values, result) for rule in record.cautions
+    found = [_told(rule, record, values, result) for rule in record.cautions
              if _holds(rule.when, rule.names, record, values, result)]
     for fitted in record.fitted:
         found += filter(None, [_outside_fitted(record, fitted, values, result)])
@@ -33,7 +33,7 @@ def cautions(record: Function, values: Sequence, result: object = None) -> list[
 
 def remarks(record: Function, values: Sequence, result: object = None) -> list[str]:
     """What else there is to tell, for example the branch used."""
-    return [_filled(rule.text, record, values, result) for rule in record.remarks
+    return [_told(rule, record, values, result) for rule in record.remarks
             if _holds(rule.when, rule.names, record, values, result)]
 
 
@@ -78,6 +78,10 @@ def _holds(when, names: Sequence[str], record: Function, values: Sequence, resul
         return bool(when(**{name: named[name] for name in names}))
     except (ArithmeticError, TypeError):  # the condition cannot be told, for example on an argument left out
         return False
+
+
+def _told(rule: Rule, record: Function, values: Sequence, result: object) -> str:
+    return _call(rule.told, record, values, result) if rule.told else _filled(rule.text, record, values, result)
 
 
 def _filled(text: str, record: Function, values: Sequence, result: object) -> str:

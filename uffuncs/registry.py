@@ -14,8 +14,13 @@ TOPICS = {
     "osmotic": ("physics.osmotic",),
     "permeation": ("physics.permeation",),
     "rejection": ("physics.rejection",),
-    "polarization": ("physics.polarization",),
-    "tools": ("tools",),
+    "crossflow": ("physics.crossflow", "physics.crossflow_transfer", "physics.crossflow_pressure", "physics.module_profile",),
+    "fouling": ("physics.fouling",),
+    "concentration": ("physics.concentration", "physics.batch", "physics.diafiltration", "physics.campaign",),
+    "plant": ("physics.plant", "physics.stages", "physics.cycles",),
+    "energy": ("physics.energy",),
+    "integrity": ("physics.integrity",),
+    "tools": ("tools.about", "tools.conversion", "tools.solving", "tools.uncertainty", "tools.claims",),
 }
 
 
