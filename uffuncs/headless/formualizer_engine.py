@@ -270,7 +270,7 @@ class _Run:
                     self._read_block(sheet, cell)
         if lost:
             self.evaluation.notes.append(
-                f"{len(lost):,} formulas were not read by the engine and keep their values; first cell {lost[0]}"
+                f"{len(lost):,} formulas were not read by the engine and keep their values; first {lost[0]}"
             )
 
     def _read_block(self, sheet, cell):

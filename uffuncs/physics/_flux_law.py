@@ -12,9 +12,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from ..declaration import Rule
 from ..errors import NoResult, NotAvailable
-from ..quantities import quantity
 
 #: Nearer than this to the gel concentration, relative, is reaching it: the flux is rounding error there.
 GEL_CLEARANCE = 1e-12
@@ -122,27 +120,3 @@ def along(
             return math.nan
         total += weight(low) * integral(j_low, j_high, high - low)
     return total
-
-
-def elementwise(function: Callable, *arguments):
-    """A function of floats over arguments that may be arrays; None stays None."""
-    if not any(isinstance(a, np.ndarray) for a in arguments):
-        return function(*arguments)
-    grids = np.broadcast_arrays(*(a if isinstance(a, np.ndarray) else np.array(a, object) for a in arguments))
-    values = [function(*row) for row in zip(*(g.ravel().tolist() for g in grids))]
-    return np.array(values, float).reshape(grids[0].shape)
-
-
-def refuse(rules: list[Rule], **values):
-    """For a function that gives a block: raise the first rule that holds, as one value would be refused.
-
-    Raises
-    ------
-    NoResult
-        With the rule's text.
-    """
-    for rule in rules:
-        if rule.when(**{name: values[name] for name in rule.names}):
-            numbers = {name: v for name, v in values.items() if isinstance(v, (int, float))}
-            raise NoResult(rule.text.format_map(
-                {name: f"{name} {quantity(name).shown(v)}" for name, v in numbers.items()}))

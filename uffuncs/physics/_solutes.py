@@ -21,13 +21,15 @@ PROPERTIES = {
     "osmotic_coefficient_2": "second_coefficient",
     "osmotic_coefficient_3": "third_coefficient",
 }
-#: the conditions of a property, askable as properties of their own -> (the property, the entry's field, the vocabulary)
+#: a condition of a property, asked for like a property -> (that property, field of its entry, vocabulary)
 CONDITIONS = {
     "diffusion_temperature": ("diffusion_coefficient", "temperature", "temperature"),
     "osmotic_temperature": ("osmotic_coefficient_1", "temperature", "temperature"),
     "osmotic_lowest_concentration": ("osmotic_coefficient_1", "lowest", "concentration"),
     "osmotic_highest_concentration": ("osmotic_coefficient_1", "highest", "concentration"),
 }
+
+_CONDITION_COLUMNS = ("temperature_celsius", "lowest_concentration", "highest_concentration")  # °C, g/L, g/L
 
 
 @dataclass(frozen=True)
@@ -57,11 +59,15 @@ def solute_table() -> dict[str, dict[str, Entry]]:
     with Path(__file__).with_name("solutes.csv").open(encoding="utf-8", newline="") as file:
         for row in csv.DictReader(file):
             _, scale, offset = worksheet_unit(row["unit"])
-            celsius, lowest, highest = (
-                float(row[c]) if row[c] else None for c in ("temperature_celsius", "lowest_concentration", "highest_concentration"))
+            celsius, lowest, highest = (float(row[c]) if row[c] else None for c in _CONDITION_COLUMNS)
             table.setdefault(row["name"], {})[row["property"]] = Entry(
-                scale * float(row["value"]) + offset, None if celsius is None else celsius + 273.15, lowest, highest,
-                row["note"], row["source"])
+                scale * float(row["value"]) + offset,
+                None if celsius is None else celsius + 273.15,
+                lowest,
+                highest,
+                row["note"],
+                row["source"],
+            )
     return table
 
 
@@ -94,7 +100,8 @@ def entry_of(solute: str, property_name: str) -> Entry:
     """
     properties = properties_of(solute)
     if property_name not in properties:
-        raise NotAvailable(f"the table has no {property_name} of {solute[:40]}; it has: {', '.join(properties)}")
+        there = ", ".join(properties)
+        raise NotAvailable(f"the table has no {property_name} of {solute[:40]}; it has: {there}")
     return properties[property_name]
 
 

@@ -7,7 +7,8 @@ from dataclasses import replace
 
 from ..declaration import Column, Number, Rule, worksheet_function
 from ..quantities import quantity
-from ._flux_law import END_SLACK, FluxLaw, along, drained, elementwise, measured_law
+from ._elements import elementwise
+from ._flux_law import END_SLACK, FluxLaw, along, drained, measured_law
 from ._gel_model import (
     ABOVE_CLEAN_WATER, ABOVE_MEASURED, BELOW_MEASURED, CHERYAN, FOLEY, GEL_MODEL, GEL_REFUSALS, NO_MAXIMUM,
     NO_MEASURED_FLUX, POINTS, PROCESS_TIME, final_concentration, gel_flux, volume_over_flux,

@@ -8,7 +8,8 @@ import numpy as np
 
 from ..declaration import Number, Rule, worksheet_function
 from ..quantities import quantity
-from ._flux_law import GEL_CLEARANCE, refuse
+from ._elements import refuse
+from ._flux_law import GEL_CLEARANCE
 from ._gel_model import ABOVE_CLEAN_WATER, AT_GEL, NO_MAXIMUM, NO_SOLUTE, NO_TRANSFER, PROCESS_TIME, gel_flux
 from .batch import GEL_SOURCE, batch_time, flux_mean
 from .concentration import concentration_batch, yield_batch

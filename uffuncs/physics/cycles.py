@@ -4,10 +4,9 @@ from __future__ import annotations
 
 from dataclasses import replace
 
-import numpy as np
-
 from ..declaration import Number, Rule, worksheet_function
 from ..quantities import quantity
+from ._elements import above_zero
 
 TOPIC = "plant"
 
@@ -28,13 +27,6 @@ NO_TIME_LEFT = Rule(lambda cleanings_per_day, cleaning_time, test_time_per_day:
 def _in_service(cleanings_per_day, cleaning_time, test_time_per_day):
     """Share of the day that is left for cycles."""
     return 1.0 - cleanings_per_day * cleaning_time - test_time_per_day
-
-
-def _positive(share: Number) -> Number:
-    """The share itself, or NaN where it is not above 0."""
-    if isinstance(share, np.ndarray):
-        return np.where(share > 0, share, np.nan)
-    return share if share > 0 else np.nan
 
 
 @worksheet_function(
@@ -108,7 +100,7 @@ def flux_net_daily(
     use permeate. Without washes and tests it is flux_net.
     """
     cycle = flux_net(flux, filtration_time, backwash_flux, backwash_time, idle_time)
-    share = _positive(_in_service(cleanings_per_day, cleaning_time, test_time_per_day))
+    share = above_zero(_in_service(cleanings_per_day, cleaning_time, test_time_per_day))
     return share * cycle - cleanings_per_day * cleaning_volume_per_area
 
 
@@ -137,7 +129,7 @@ def recovery_daily(
     Dead-end: the feed is what is filtered. Backwash and washes use permeate. Idle and test time count only in
     that they leave fewer cycles to carry the water of the washes.
     """
-    share = _positive(_in_service(cleanings_per_day, cleaning_time, test_time_per_day))
+    share = above_zero(_in_service(cleanings_per_day, cleaning_time, test_time_per_day))
     gross = share * flux * filtration_time / (filtration_time + backwash_time + idle_time)
     net = flux_net_daily(flux, filtration_time, backwash_flux, backwash_time, idle_time, cleanings_per_day,
                          cleaning_time, cleaning_volume_per_area, test_time_per_day)
@@ -159,7 +151,7 @@ def availability(
     The interval is time in service, and a test takes its time on every calendar day, days of cleaning
     included.
     """
-    between_tests = _positive(1.0 - test_duration_per_day)
+    between_tests = above_zero(1.0 - test_duration_per_day)
     return cleaning_interval / (cleaning_interval + cleaning_duration) * between_tests
 
 

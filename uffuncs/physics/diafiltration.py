@@ -9,7 +9,8 @@ import numpy as np
 
 from ..declaration import Column, Number, Rule, worksheet_function
 from ..quantities import quantity
-from ._flux_law import END_SLACK, GEL_CLEARANCE, HIGH_FLUX, FluxLaw, along, elementwise, measured_law, passed
+from ._elements import above_zero, elementwise
+from ._flux_law import END_SLACK, GEL_CLEARANCE, HIGH_FLUX, FluxLaw, along, measured_law, passed
 from ._gel_model import (
     ABOVE_MEASURED, BELOW_MEASURED, CHERYAN, FOLEY, GEL_MODEL, NO_MAXIMUM, NO_MEASURED_FLUX, NO_TRANSFER,
     POINTS, PROCESS_TIME, diavolumes_over_flux, gel_flux,
@@ -34,7 +35,7 @@ def diavolumes(remaining_fraction: Number, sieving_coefficient: Number = 1.0) ->
 
     Water is added as permeate leaves; well mixed, with a constant sieving coefficient.
     """
-    return -np.log(remaining_fraction) / sieving_coefficient
+    return -np.log(remaining_fraction) / above_zero(sieving_coefficient)
 
 
 @worksheet_function(

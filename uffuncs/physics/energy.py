@@ -2,31 +2,33 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
-
 import numpy as np
 
 from ..declaration import Number, Rule, worksheet_function
-from ..quantities import quantity
 from ..units import YEAR
 from .constants import STANDARD_ATMOSPHERE
 
-PUMPS = "Perry's Chemical Engineers' Handbook, 8th ed., McGraw-Hill (2008), section 10"
-METCALF_EDDY = "Metcalf & Eddy, Wastewater Engineering: Treatment and Resource Recovery, 5th ed., McGraw-Hill (2014)"
+PERRY = "Perry's Chemical Engineers' Handbook, 8th ed., McGraw-Hill (2008)"
+METCALF_EDDY = ("Metcalf & Eddy, Wastewater Engineering: Treatment and Resource Recovery, 5th ed., "
+                "McGraw-Hill (2014)")
 BLANK_TARQUIN = "Blank & Tarquin, Engineering Economy, 7th ed., McGraw-Hill (2012)"
-PETERS = "Peters, Timmerhaus & West, Plant Design and Economics for Chemical Engineers, 5th ed., McGraw-Hill (2003)"
+PETERS = ("Peters, Timmerhaus & West, Plant Design and Economics for Chemical Engineers, 5th ed., "
+          "McGraw-Hill (2003)")
 
 AIR_HEAT_CAPACITY_RATIO = 1.4  # diatomic gas
+YEARLY_VOLUME = "Permeate volume in a year, downtime allowed for"
+YEARLY_VOLUME = "Permeate volume in a year, downtime allowed for"
 YEARLY = "rates are per year, the life is counted in years"
 
 NO_PERMEATE = Rule(lambda permeate_flow: permeate_flow == 0, "the permeate flow is 0")
 
 
-@worksheet_function(result="power", equation="P = Q Δp/η", source=PUMPS)
+@worksheet_function(result="power", equation="P = Q Δp/η", source=PERRY)
 def pump_power(flow: Number, pressure_rise: Number, efficiency: Number = 0.7) -> Number:
     """Power drawn by a pump.
 
-    `efficiency` is that of pump, motor and drive together; with that of the pump alone it is the power at the shaft.
+    `efficiency` is that of pump, motor and drive together; with that of the pump alone it is the power at the
+    shaft.
     """
     return flow * pressure_rise / efficiency
 
@@ -38,8 +40,8 @@ def _compresses(outlet_pressure, inlet_pressure, atmospheric_pressure):
 @worksheet_function(
     result="power",
     equation="P = Q_a p_1 [κ/(κ − 1)] [(p_2/p_1)^((κ − 1)/κ) − 1]/η, p absolute, κ = 1.4",
-    source=f"adiabatic compression of an ideal gas, {METCALF_EDDY}; {PUMPS}",
-    arguments={"efficiency": replace(quantity("efficiency"), meaning="Overall efficiency of blower and motor, adiabatic")},
+    source=f"adiabatic compression of an ideal gas, {METCALF_EDDY}; {PERRY}",
+    arguments={"efficiency": "Overall adiabatic efficiency of blower and motor"},
     refuses=[Rule(lambda inlet_pressure, atmospheric_pressure: inlet_pressure + atmospheric_pressure <= 0,
                   "{inlet_pressure} with {atmospheric_pressure} leaves no absolute pressure at the inlet"),
              Rule(lambda outlet_pressure, inlet_pressure: outlet_pressure < inlet_pressure,
@@ -54,8 +56,9 @@ def blower_power(
 ) -> Number:
     """Power drawn by an air blower, by adiabatic compression.
 
-    Dry air as an ideal gas, one stage without cooling, no heat lost; outlet and inlet pressure are gauge and are made absolute
-    with the atmospheric pressure. The flow is that at inlet pressure and temperature, not standard or normal air.
+    Dry air as an ideal gas, one stage without cooling, no heat lost; outlet and inlet pressure are gauge and
+    are made absolute with the atmospheric pressure. The flow is that at inlet pressure and temperature, not
+    standard or normal air.
     """
     compresses = _compresses(outlet_pressure, inlet_pressure, atmospheric_pressure)
     inlet = np.where(compresses, inlet_pressure + atmospheric_pressure, np.nan)
@@ -67,22 +70,22 @@ def blower_power(
 @worksheet_function(
     result="temperature_rise",
     equation="ΔT = P/(Q ρ c_p)",
-    source=f"energy balance, {PUMPS}",
+    source=f"energy balance, {PERRY}",
     arguments={"power": "Power that stays in the liquid as heat"},
     refuses=[Rule(lambda flow: flow == 0, "the flow is 0: nothing carries the heat away")],
 )
-def temperature_rise(power: Number, flow: Number, density: Number = 1000.0, heat_capacity: Number = 4180.0) -> Number:
+def temperature_rise(
+    power: Number, flow: Number, density: Number = 1000.0, heat_capacity: Number = 4180.0
+) -> Number:
     """Temperature rise of a stream that takes up power as heat.
 
-    At steady state, no heat lost. In a recirculation loop nearly all the pump's power ends as heat in the liquid that leaves:
-    take the flow through the plant, not that of the loop.
+    At steady state, no heat lost. In a recirculation loop nearly all the pump's power ends as heat in the
+    liquid that leaves: take the flow through the plant, not that of the loop.
     """
     return power / (flow * density * heat_capacity)
 
 
-@worksheet_function(
-    result="energy", equation="E = P/Q_p", source="definition", refuses=[NO_PERMEATE],
-)
+@worksheet_function(result="energy", equation="E = P/Q_p", source="definition", refuses=[NO_PERMEATE])
 def energy_specific(power: Number, permeate_flow: Number) -> Number:
     """Energy per volume of permeate."""
     return power / permeate_flow
@@ -91,7 +94,7 @@ def energy_specific(power: Number, permeate_flow: Number) -> Number:
 @worksheet_function(
     result="energy",
     equation="E = (Q_f Δp_f + Q_l Δp_l)/(η Q_p)",
-    source=f"energy balance, {PUMPS}",
+    source=f"energy balance, {PERRY}",
     refuses=[NO_PERMEATE],
 )
 def energy_crossflow(
@@ -119,7 +122,7 @@ def _annuity_factor(rate: Number, years: Number) -> Number:
     result="membrane_cost",
     equation="c_m = A c_A a/V_a, a = i/[1 − (1 + i)^−n], 1/n at i = 0",
     source=f"capital recovery by an annuity, {BLANK_TARQUIN}; {PETERS}",
-    arguments={"life_years": "Life of the membranes", "permeate_volume_per_year": "Permeate volume in a year, downtime allowed for"},
+    arguments={"life_years": "Life of the membranes", "permeate_volume_per_year": YEARLY_VOLUME},
     dimensional=YEARLY,
 )
 def cost_membrane(
@@ -131,18 +134,20 @@ def cost_membrane(
 ) -> Number:
     """Membrane replacement cost per volume of permeate, discounted over the membranes' life.
 
-    Each set is paid when it goes in and recovered by equal payments at the end of each year of its life, at the discount rate:
-    the annuity of its price, the same for every set if the price stays. Without a rate it is price over life. (Saving for
-    the next set beforehand, a sinking fund, would cost less by rate times price in a year.) No value left at the end, no labour.
+    Each set is paid when it goes in and recovered by equal payments at the end of each year of its life, at
+    the discount rate: the annuity of its price, the same for every set if the price stays. Without a rate it
+    is price over life. No value is left at the end; labour is not in it. (A sinking fund, saving for the next
+    set beforehand, would cost less by rate times price in a year.)
     """
-    return area * price_per_area * _annuity_factor(discount_rate, life_years / YEAR) / YEAR / permeate_volume_per_year
+    yearly = area * price_per_area * _annuity_factor(discount_rate, life_years / YEAR) / YEAR
+    return yearly / permeate_volume_per_year
 
 
 @worksheet_function(
     result="cost",
     equation="c = K a/V_a + E c_e + c_m + c_o/V_a, a = i/[1 − (1 + i)^−n], 1/n at i = 0",
     source=f"capital recovery by an annuity, {BLANK_TARQUIN}; {PETERS}",
-    arguments={"life_years": "Life of the plant", "permeate_volume_per_year": "Permeate volume in a year, downtime allowed for",
+    arguments={"life_years": "Life of the plant", "permeate_volume_per_year": YEARLY_VOLUME,
                "capital": "Capital outlay without the membranes, if these are in the membrane cost"},
     dimensional=YEARLY,
 )
@@ -158,8 +163,8 @@ def cost_treatment(
 ) -> Number:
     """Cost per volume of permeate: capital, energy, membranes and the rest.
 
-    Capital is recovered by equal payments at the end of each year of the plant's life; energy is per volume of permeate. Rate and
-    prices are in the same money, both with inflation or both without. No taxes, no value left at the end.
+    Capital is recovered by equal payments at the end of each year of the plant's life; energy is per volume
+    of permeate. Rate and prices are both with inflation or both without. No taxes, no value left at the end.
     """
     fixed = capital * _annuity_factor(interest_rate, life_years / YEAR) / YEAR + other_cost
     return fixed / permeate_volume_per_year + energy * energy_price + membrane_cost

@@ -169,8 +169,8 @@ def _turbulent(temperature, transmembrane_pressure, inlet, outlet, expansion_fac
     result="air_liquid_ratio",
     equation="p_1 = p_test + p_atm, p_2 = p_back + p_atm; laminar: (µ_w/µ_air)(p_1² − p_2²)/(2 p_atm Δp_tm); "
              "turbulent: 170 Y [(p_test − p_back) p_1/((460 + t) Δp_tm)]^½ in psi and °F",
-    source=f"laminar: Hagen–Poiseuille, water: {SR6_08}, {AIR}; turbulent: {EPA}, Appendix C (from memory; "
-           f"169.8 follows from Darcy's equation); Y: charts of {CRANE}",
+    source=f"laminar: Hagen–Poiseuille, water: {SR6_08}, {AIR}; turbulent: {EPA}, Appendix C (not checked "
+           f"against the print; 169.8 follows from Darcy's equation); Y: charts of {CRANE}",
     choices={"regime": ("laminar", "turbulent")},
     names={"regime": "Regime of the flow of air through the breach"},
     arguments={"transmembrane_pressure": replace(quantity("transmembrane_pressure"), low=1e-3,

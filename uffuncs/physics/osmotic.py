@@ -13,25 +13,31 @@ from ._solutes import entry_of, osmotic_fit as published_fit
 from .constants import GAS_CONSTANT
 
 VANT_HOFF = "van 't Hoff, Z. phys. Chem. 1 (1887) 481"
-MCMILLAN_MAYER = ("McMillan & Mayer, The statistical thermodynamics of multicomponent systems, J. Chem. Phys. 13 (1945) 276; "
-                  "Tombs & Peacocke, The Osmotic Pressure of Biological Macromolecules, Oxford (1974)")
-VILKER = ("Vilker, Colton & Smith, The osmotic pressure of concentrated protein solutions: effect of concentration and pH in saline "
-          "solutions of bovine serum albumin, J. Colloid Interface Sci. 79 (1981) 548")
-CARNAHAN_STARLING = ("Carnahan & Starling, Equation of state for nonattracting rigid spheres, J. Chem. Phys. 51 (1969) 635")
+MCMILLAN_MAYER = ("McMillan & Mayer, The statistical thermodynamics of multicomponent systems, "
+                  "J. Chem. Phys. 13 (1945) 276; Tombs & Peacocke, The Osmotic Pressure of Biological "
+                  "Macromolecules, Oxford (1974)")
+VILKER = ("Vilker, Colton & Smith, The osmotic pressure of concentrated protein solutions: effect of "
+          "concentration and pH in saline solutions of bovine serum albumin, "
+          "J. Colloid Interface Sci. 79 (1981) 548")
+CARNAHAN_STARLING = ("Carnahan & Starling, Equation of state for nonattracting rigid spheres, "
+                     "J. Chem. Phys. 51 (1969) 635")
 
 OSMOTIC_TEMPERATURE = 298.15  # K, the 25 °C of most measurements
 HIGHEST_FLUID_FRACTION = 0.49  # hard spheres begin to freeze above this
 
 SOLUTION = {"temperature": "Temperature of the solution"}
-NEGATIVE = Rule(lambda result: result < 0, "the osmotic pressure is negative: the coefficients do not hold at {concentration}")
+NEGATIVE = Rule(lambda result: result < 0,
+                "the osmotic pressure is negative: the coefficients do not hold at {concentration}")
 
 
 @worksheet_function(result="osmotic_pressure", equation="π = R T C/M", source=VANT_HOFF, arguments=SOLUTION)
-def osmotic_vant_hoff(concentration: Number, molar_mass: Number, temperature: Number = OSMOTIC_TEMPERATURE) -> Number:
+def osmotic_vant_hoff(
+    concentration: Number, molar_mass: Number, temperature: Number = OSMOTIC_TEMPERATURE
+) -> Number:
     """Osmotic pressure of a dilute solution.
 
-    The ideal limit: macromolecules exceed it many times at the concentrations at a membrane. For a salt use the mean molar mass
-    of its ions.
+    The ideal limit: macromolecules exceed it many times at the concentrations at a membrane. For a salt use
+    the mean molar mass of its ions.
     """
     return GAS_CONSTANT * temperature * concentration / molar_mass
 
@@ -52,27 +58,32 @@ def osmotic_virial(
 ) -> Number:
     """Osmotic pressure from virial coefficients.
 
-    A series in concentration, cut after the third term: for moderate concentrations. The coefficients belong to one pH, salt and
-    temperature.
+    A series in concentration, cut after the third term: for moderate concentrations. The coefficients belong
+    to one pH, salt and temperature.
     """
-    series = 1.0 / molar_mass + concentration * (second_virial_coefficient + concentration * third_virial_coefficient)
-    return GAS_CONSTANT * temperature * concentration * series
+    higher = concentration * (second_virial_coefficient + concentration * third_virial_coefficient)
+    return GAS_CONSTANT * temperature * concentration * (1.0 / molar_mass + higher)
 
 
 @worksheet_function(
     result="osmotic_pressure",
     equation="π = b_1 C + b_2 C² + b_3 C³",
-    source="polynomial through the origin, common practice for measured osmotic pressures; see osmotic_fit and osmotic_solute",
+    source="polynomial through the origin, common practice for measured osmotic pressures",
     cautions=[NEGATIVE],
 )
 def osmotic_polynomial(
-    concentration: Number, first_coefficient: Number, second_coefficient: Number = 0.0, third_coefficient: Number = 0.0
+    concentration: Number,
+    first_coefficient: Number,
+    second_coefficient: Number = 0.0,
+    third_coefficient: Number = 0.0,
 ) -> Number:
     """Osmotic pressure from a fitted polynomial.
 
-    The coefficients belong to one solute, pH, salt, temperature and range of concentration: it does not extrapolate.
+    The coefficients belong to one solute, pH, salt, temperature and range of concentration: it does not
+    extrapolate. osmotic_fit fits them, osmotic_solute has some published ones.
     """
-    return concentration * (first_coefficient + concentration * (second_coefficient + concentration * third_coefficient))
+    higher = concentration * (second_coefficient + concentration * third_coefficient)
+    return concentration * (first_coefficient + higher)
 
 
 @worksheet_function(
@@ -84,7 +95,8 @@ def osmotic_polynomial(
 def osmotic_power(concentration: Number, power_coefficient: Number, exponent: Number) -> Number:
     """Osmotic pressure from a fitted power law.
 
-    The coefficient is in bar/(g/L)ⁿ with the exponent's n. It does not extrapolate; at low concentration only n = 1 is right.
+    The coefficient is in bar/(g/L)ⁿ with the exponent's n. It does not extrapolate; at low concentration only
+    n = 1 is right.
     """
     return power_coefficient * concentration**exponent
 
@@ -107,32 +119,40 @@ def osmotic_donnan(
 ) -> Number:
     """Osmotic pressure of a charged protein in a solution of a 1:1 salt.
 
-    The first term is the excess of small ions that the protein's charge holds back (Donnan), the second the protein's own with
-    its nonideality. The coefficients belong to one protein, pH and salt; those of the source, for serum albumin, are functions of
-    the charge. The sign of the charge does not matter. Salt concentration 0 leaves the counter-ions alone.
+    The first term is the excess of small ions that the protein's charge holds back (Donnan), the second the
+    protein's own with its nonideality. The coefficients belong to one protein, pH and salt; those of the
+    source, for serum albumin, are functions of the charge. The sign of the charge does not matter. Salt
+    concentration 0 leaves the counter-ions alone. The volume that the protein takes from the salt is not in
+    the first term: the fitted coefficients hold it.
     """
     half = abs(charge_number) * concentration / (2.0 * molar_mass)
-    # (x² + m²)^½ − m is x tan(½ arctan(x/m)), which does not cancel where x is small against m, and stands at m = 0.
+    # (x² + m²)^½ − m is x tan(½ arctan(x/m)): nothing cancels where x is small against m, and m may be 0
     ions = 2.0 * half * np.tan(0.5 * np.arctan2(half, salt_concentration))
-    protein = concentration * (1.0 + concentration * (nonideality_2 + concentration * nonideality_3)) / molar_mass
-    return GAS_CONSTANT * temperature * (ions + protein)
+    nonideal = concentration * (nonideality_2 + concentration * nonideality_3)
+    return GAS_CONSTANT * temperature * (ions + concentration / molar_mass * (1.0 + nonideal))
 
 
 @worksheet_function(
     result="osmotic_pressure",
     equation="π = (R T C/M)(1 + φ + φ² − φ³)/(1 − φ)³, φ = C v",
     source=CARNAHAN_STARLING,
-    arguments={**SOLUTION, "partial_specific_volume": "Volume of the sphere per dry mass; hydrated for a protein"},
-    refuses=[Rule(lambda concentration, partial_specific_volume: concentration * partial_specific_volume > HIGHEST_FLUID_FRACTION,
-                  "{concentration} at {partial_specific_volume} is a volume fraction above 0.49, where hard spheres freeze")],
+    arguments={**SOLUTION,
+               "partial_specific_volume": "Volume of the sphere per dry mass; hydrated for a protein"},
+    refuses=[Rule(lambda concentration, partial_specific_volume:
+                  concentration * partial_specific_volume > HIGHEST_FLUID_FRACTION,
+                  "{concentration} at {partial_specific_volume} is a volume fraction above 0.49, where hard "
+                  "spheres freeze")],
 )
 def osmotic_hard_sphere(
-    concentration: Number, molar_mass: Number, partial_specific_volume: Number, temperature: Number = OSMOTIC_TEMPERATURE
+    concentration: Number,
+    molar_mass: Number,
+    partial_specific_volume: Number,
+    temperature: Number = OSMOTIC_TEMPERATURE,
 ) -> Number:
     """Osmotic pressure of hard spheres.
 
-    Repulsion by volume alone, no charge and no attraction: a compact protein at its isoelectric point or in much salt. Volume
-    fractions up to 0.49, the fluid branch.
+    Repulsion by volume alone, no charge and no attraction: a compact protein at its isoelectric point or in
+    much salt. Volume fractions up to 0.49, the fluid branch.
     """
     filling = concentration * partial_specific_volume
     # A hair of slack: 490 g/L at 1 mL/g may come out above 0.49 by rounding.
@@ -151,24 +171,34 @@ def _outside(solute: str, concentration: float) -> bool:
     return not low * (1 - 1e-9) <= concentration <= high * (1 + 1e-9)
 
 
+def _told_outside(solute: str, concentration: float) -> str:
+    low, high = _range_of(solute)
+    return (f"concentration {concentration:.6g} g/L is outside {low:.6g} to {high:.6g} g/L, "
+            f"where the published equation of {solute[:40]} was fitted")
+
+
+def _told_outside(solute: str, concentration: float) -> str:
+    low, high = _range_of(solute)
+    return (f"concentration {concentration:.6g} g/L is outside {low:.6g} to {high:.6g} g/L, "
+            f"where the published equation of {solute[:40]} was fitted")
+
+
 @worksheet_function(
     result="osmotic_pressure",
     equation="π = b_1 C + b_2 C² + b_3 C³, with the published coefficients",
     source="one for each solute of the table; UF_WHY tells it",
     names={"solute": "Name of a solute that the table has osmotic coefficients of, such as whey protein"},
-    cautions=[Rule(_outside, "the concentration is outside the range of the published fit",
-                   told=lambda solute, concentration: "concentration {:.6g} g/L is outside {:.6g} to {:.6g} g/L, where the fit for {} "
-                                                      "was made".format(concentration, *_range_of(solute), solute)),
+    cautions=[Rule(_outside, "the concentration is outside the range of the published fit", _told_outside),
               NEGATIVE],
     remarks=[Rule(lambda solute: True, "the temperature of the fit, and where it comes from",
-                  told=lambda solute: entry_of(solute, "osmotic_coefficient_1").origin)],
+                  lambda solute: entry_of(solute, "osmotic_coefficient_1").origin)],
     dimensional="coefficients from a table",
 )
 def osmotic_solute(solute: str, concentration: Number) -> Number:
     """Osmotic pressure of a common solute by a published fit, at the temperature of the fit.
 
-    UF_SOLUTE gives the coefficients, their temperature and range. pH and salt are those of the publication. It does not
-    extrapolate.
+    UF_SOLUTE gives the coefficients, their temperature and range. pH and salt are those of the publication.
+    It does not extrapolate.
     """
     return osmotic_polynomial(concentration, *published_fit(solute))
 
@@ -185,22 +215,23 @@ _ORDER = ("first", "second", "third")
     ],
     columns=lambda terms: (*range(int(terms)), *range(3, 3 + int(terms)), 6),
     equation="π = Σ b_n C^n, n = 1 … terms; Σ(π − π_fit)² least; r² = 1 − Σ(π − π_fit)²/Σπ²",
-    source="linear least squares without intercept; definitions as in NIST Statistical Reference Datasets, NoInt1 and NoInt2",
+    source="linear least squares without intercept; r² as in NIST Statistical Reference Datasets, NoInt1",
     dimensional="least squares on scaled numbers",
 )
 def osmotic_fit(concentration: Column, osmotic_pressure: Column, terms: Number = 3.0) -> tuple:
     """Polynomial through the origin fitted to measured osmotic pressures.
 
-    One row: as many coefficients as terms, as many standard errors, r². Every point has the same weight. Without an intercept r²
-    is about zero, not about the mean, as certified for such fits: it is near 1 for almost any rising data, so look at the standard
-    errors. One more point than terms is needed at least.
+    One row: as many coefficients as terms, as many standard errors, r². Every point has the same weight.
+    Without an intercept r² is about zero, not about the mean, as certified for such fits: it is near 1 for
+    almost any rising data, so look at the standard errors. At least one more point than terms is needed.
     """
     count = int(terms)
-    if len(concentration) <= count:
-        raise NotAvailable(f"{len(concentration)} points; {count} terms with standard errors need {count + 1} or more")
+    points = len(concentration)
+    if points <= count:
+        raise NotAvailable(f"{points} points; {count} terms with standard errors need {count + 1} or more")
     different = np.unique(concentration[concentration > 0]).size
     if different < count:
-        raise NotAvailable(f"{different} different concentrations above 0; {count} terms need {count} or more")
+        raise NotAvailable(f"{different} different concentrations above 0; {count} terms need as many")
     total = osmotic_pressure @ osmotic_pressure
     if total == 0:
         raise NotAvailable("every osmotic pressure is 0; there is nothing to fit")
@@ -212,6 +243,6 @@ def osmotic_fit(concentration: Column, osmotic_pressure: Column, terms: Number =
     inverse = np.linalg.inv(triangle)
     coefficients = inverse @ (orthogonal.T @ osmotic_pressure)
     rest = osmotic_pressure - powers @ coefficients
-    variance = rest @ rest / (len(rest) - count)
+    variance = rest @ rest / (points - count)
     errors = np.sqrt(variance * (inverse**2).sum(axis=1))
     return *(coefficients / scale), *(errors / scale), 1.0 - rest @ rest / total

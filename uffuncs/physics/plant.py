@@ -10,7 +10,8 @@ import numpy as np
 from ..declaration import Number, Rule, worksheet_function
 from ..errors import NoResult
 from ..quantities import quantity
-from ._flux_law import GEL_CLEARANCE, refuse
+from ._elements import above_zero, refuse
+from ._flux_law import GEL_CLEARANCE
 from ._gel_model import ABOVE_CLEAN_WATER, GEL_MODEL, GEL_REFUSALS, NO_MAXIMUM, volume_over_flux
 from .permeation import D6161, IUPAC
 
@@ -112,12 +113,7 @@ def flux_racks(
     permeate_flow: Number, racks: Number, racks_out: Number, modules_per_rack: Number, module_area: Number
 ) -> Number:
     """Flux of the racks in service when others are out, for cleaning, test or repair."""
-    in_service = racks - racks_out
-    if isinstance(in_service, np.ndarray):
-        in_service = np.where(in_service > 0, in_service, np.nan)
-    elif in_service <= 0:
-        in_service = np.nan
-    return permeate_flow / (in_service * modules_per_rack * module_area)
+    return permeate_flow / (above_zero(racks - racks_out) * modules_per_rack * module_area)
 
 
 # --- the tapered array --------------------------------------------------------------------------------------

@@ -170,7 +170,7 @@ def _convection_slit(lam: Number) -> Number:
     equation="cylinder: W = (1 − λ)² (1 + 3.867 λ − 1.907 λ² − 0.834 λ³)/(1 + 1.867 λ − 0.741 λ²); "
              "slit: W = 1 − 3.02 λ² + 5.776 λ³ − 12.3675 λ⁴ + 18.9775 λ⁵ − 15.2185 λ⁶ + 4.8525 λ⁷; "
              "λ = r_s/r_pore, 0 from λ = 1 on",
-    source=f"{DECHADILOK_DEEN}, equation 18 (cylinder); coefficients of the slit from memory",
+    source=f"{DECHADILOK_DEEN}, equation 18 (cylinder); coefficients of the slit not checked against the paper",
     choices={"pore_shape": PORE_SHAPES},
     names={"pore_shape": "Shape of the pores"},
 )
@@ -193,7 +193,7 @@ CONTACT = 0.95  # λ of the cylinder above which the asymptote for near contact 
              "+ 0.270788 λ⁵ + 1.10115 λ⁶ − 0.435933 λ⁷, above λ = 0.95 H = (1 − λ)² 0.984 ((1 − λ)/λ)^(5/2); "
              "slit: H = 1 + (9/16) λ ln λ − 1.19358 λ + 0.4285 λ³ − 0.3192 λ⁴ + 0.08428 λ⁵",
     source=f"{DECHADILOK_DEEN}, equation 16 (cylinder); above 0.95: {MAVROVOUNIOTIS_BRENNER}; "
-           "coefficients of the slit from memory",
+           "coefficients of the slit not checked against the paper",
     choices={"pore_shape": PORE_SHAPES},
     names={"pore_shape": "Shape of the pores"},
     remarks=[Rule(lambda solute_radius, pore_radius, pore_shape:
@@ -291,7 +291,7 @@ def sieving_pore_spread(
     z = np.asarray(low)[..., None] + np.asarray(width)[..., None] * nodes
     lam = np.minimum(np.asarray(ratio)[..., None] * np.exp(-np.asarray(spread)[..., None] * z), 1.0)
     density = np.exp(-0.5 * z**2) * (1.0 / np.sqrt(2.0 * np.pi))
-    return width * ((_convection_cylinder(lam) * density) @ weights)
+    return np.minimum(width * ((_convection_cylinder(lam) * density) @ weights), 1.0)
 
 
 @worksheet_function(
@@ -384,7 +384,7 @@ def cut_off(molar_mass: Column, rejection: Column, level: Number = 0.9) -> Numbe
     above = np.minimum(np.searchsorted(curve, level), len(curve) - 1)  # the first to reach the level
     below = np.maximum(above - 1, 0)
     rise = curve[above] - curve[below]
-    share = np.where(rise > 0, (level - curve[below]) / np.where(rise > 0, rise, 1.0), 0.0)
+    share = np.clip((level - curve[below]) / np.where(rise > 0, rise, np.inf), 0.0, 1.0)
     found = np.exp(logarithms[below] + share * (logarithms[above] - logarithms[below]))
     return np.where((curve[0] <= level) & (level <= curve[-1]), found, np.nan)[()]
 

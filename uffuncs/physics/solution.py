@@ -1,4 +1,4 @@
-"""Solutions: viscosity and density, size and diffusion of the solute, the Donnan ratio, a table of solutes."""
+"""Solutions: viscosity, density, size and diffusion of the solute, Donnan ratio, a table of solutes."""
 
 from __future__ import annotations
 
@@ -9,27 +9,31 @@ import numpy as np
 
 from ..declaration import Fitted, Number, Rule, worksheet_function
 from ..quantities import quantity
-from ._solutes import CONDITIONS, PROPERTIES, entry_of
+from ._solutes import CONDITIONS, PROPERTIES, Entry, entry_of
 from .constants import AVOGADRO_CONSTANT, BOLTZMANN_CONSTANT
 from .water import LIQUID_RANGE, ROOM_TEMPERATURE, WATER_VISCOSITY_20, water_density
 
 ROSS_MINTON = ("Ross & Minton, Hard quasispherical model for the viscosity of hemoglobin solutions, "
                "Biochem. Biophys. Res. Commun. 76 (1977) 971")
-KRIEGER_DOUGHERTY = ("Krieger & Dougherty, A mechanism for non-Newtonian flow in suspensions of rigid spheres, "
-                     "Trans. Soc. Rheol. 3 (1959) 137")
+KRIEGER_DOUGHERTY = ("Krieger & Dougherty, A mechanism for non-Newtonian flow in suspensions of rigid "
+                     "spheres, Trans. Soc. Rheol. 3 (1959) 137")
 TANFORD = "Tanford, Physical Chemistry of Macromolecules, Wiley (1961)"
-DEXTRAN_RADIUS = ("r/Å = 0.33 M^0.463 as printed in Membranes 11 (2021) 331, doi 10.3390/membranes11050331, Table 1, footnote i; "
+DEXTRAN_RADIUS = ("Membranes 11 (2021) 331, doi 10.3390/membranes11050331, Table 1, footnote i; "
                   "after Granath & Kvist, J. Chromatogr. 28 (1967) 69")
-SINGH = ("Singh, Khulbe, Matsuura & Ramamurthy, Membrane characterization by solute transport and atomic force microscopy, "
-         "J. Membr. Sci. 142 (1998) 111")
+SINGH = ("Singh, Khulbe, Matsuura & Ramamurthy, Membrane characterization by solute transport and atomic "
+         "force microscopy, J. Membr. Sci. 142 (1998) 111")
+ERICKSON = ("Erickson, Size and shape of protein molecules at the nanometer level, "
+            "Biol. Proced. Online 11 (2009) 32")
 EINSTEIN = "Einstein, Ann. Phys. 17 (1905) 549; Sutherland, Phil. Mag. 9 (1905) 781"
-YOUNG = "Young, Carroad & Bell, Estimation of diffusion coefficients of proteins, Biotechnol. Bioeng. 22 (1980) 947"
-POLSON = ("Polson, Some aspects of diffusion in solution and a definition of a colloidal particle, J. Phys. Colloid Chem. 54 (1950) "
-          "649; constant as in Geankoplis, Transport Processes and Unit Operations, 3rd ed., Prentice Hall (1993), Example 6.4-1")
-BOLTON = ("Bolton, Boesch, Basha, LaCasse, Kelley & Acharya, Effect of protein and solution properties on the Donnan effect during "
-          "the ultrafiltration of proteins, Biotechnol. Prog. 27 (2011) 140")
-STONER = ("Stoner, Fischer, Nie, Buckel, Benke, Austin, Randolph & Kendrick, Protein–solute interactions affect the outcome of "
-          "ultrafiltration/diafiltration operations, J. Pharm. Sci. 93 (2004) 2332")
+YOUNG = ("Young, Carroad & Bell, Estimation of diffusion coefficients of proteins, "
+         "Biotechnol. Bioeng. 22 (1980) 947")
+POLSON = ("Polson, Some aspects of diffusion in solution and a definition of a colloidal particle, "
+          "J. Phys. Colloid Chem. 54 (1950) 649; constant as in Geankoplis, Transport Processes and Unit "
+          "Operations, 3rd ed., Prentice Hall (1993), Example 6.4-1")
+BOLTON = ("Bolton, Boesch, Basha, LaCasse, Kelley & Acharya, Effect of protein and solution properties on "
+          "the Donnan effect during the ultrafiltration of proteins, Biotechnol. Prog. 27 (2011) 140")
+STONER = ("Stoner, Fischer, Nie, Buckel, Benke, Austin, Randolph & Kendrick, Protein–solute interactions "
+          "affect the outcome of ultrafiltration/diafiltration operations, J. Pharm. Sci. 93 (2004) 2332")
 
 WATER_20 = {"solvent_viscosity": "water 20 °C"}
 SOLUTION_TEMPERATURE = "Temperature of the solution"
@@ -37,11 +41,11 @@ SOLVENT_VISCOSITY = "Dynamic viscosity of the solvent, at the temperature given"
 BOUND_WATER_VOLUME = 1e-3  # m³/kg, the round 1 mL/g of the trade
 LARGEST_EXPONENT = 700.0  # e^700 is about the largest number there is
 
-OVERFULL = Rule(lambda concentration, partial_specific_volume: concentration * partial_specific_volume > 1,
-                "{concentration} at {partial_specific_volume} is more solute than the volume holds")
+OVERFILLED = Rule(lambda concentration, partial_specific_volume: concentration * partial_specific_volume > 1,
+                    "{concentration} at {partial_specific_volume} is more solute than the volume holds")
 
 
-# --- viscosity and density ------------------------------------------------------------------------------------------
+# --- viscosity and density ----------------------------------------------------------------------------------
 
 
 @worksheet_function(
@@ -49,18 +53,23 @@ OVERFULL = Rule(lambda concentration, partial_specific_volume: concentration * p
     equation="µ = µ_0 exp{[η] C/(1 − (k/ν) [η] C)}",
     source=ROSS_MINTON,
     default_texts=WATER_20,
-    refuses=[Rule(lambda concentration, intrinsic_viscosity, crowding_factor: crowding_factor * intrinsic_viscosity * concentration >= 1,
+    refuses=[Rule(lambda concentration, intrinsic_viscosity, crowding_factor:
+                  crowding_factor * intrinsic_viscosity * concentration >= 1,
                   "(k/ν) [η] C is 1 or more: at {concentration} the solution no longer flows"),
-             Rule(lambda concentration: True, "(k/ν) [η] C is so near 1 that the viscosity exceeds any number")],
+             Rule(lambda concentration: True,
+                  "the viscosity exceeds any number: (k/ν) [η] C is near 1, or [η] C beyond any solution")],
 )
 def viscosity_ross_minton(
-    concentration: Number, intrinsic_viscosity: Number, crowding_factor: Number, solvent_viscosity: Number = WATER_VISCOSITY_20
+    concentration: Number,
+    intrinsic_viscosity: Number,
+    crowding_factor: Number,
+    solvent_viscosity: Number = WATER_VISCOSITY_20,
 ) -> Number:
     """Viscosity of a concentrated protein solution.
 
-    Newtonian, at low shear, globular proteins that do not associate; Mooney's equation with [η] C in place of 2.5 φ.
-    `crowding_factor` is k/ν, about 0.3 to 0.6 for proteins, best fitted to measured viscosities (common practice, no source).
-    Dilute: µ_0 (1 + [η] C).
+    Newtonian, at low shear, globular proteins that do not associate; Mooney's equation with [η] C in place
+    of 2.5 φ. `crowding_factor` is k/ν, about 0.3 to 0.6 for proteins, best fitted to measured viscosities
+    (common practice, no source). Dilute: µ_0 (1 + [η] C).
     """
     dilute = intrinsic_viscosity * concentration
     room = 1.0 - crowding_factor * dilute
@@ -74,7 +83,8 @@ def viscosity_ross_minton(
     default_texts=WATER_20,
     refuses=[Rule(lambda volume_fraction, maximum_volume_fraction: volume_fraction >= maximum_volume_fraction,
                   "{volume_fraction} is not below {maximum_volume_fraction}: the suspension no longer flows"),
-             Rule(lambda volume_fraction: True, "the suspension is so near its densest packing that the viscosity exceeds any number")],
+             Rule(lambda volume_fraction: True,
+                  "the viscosity exceeds any number: {volume_fraction} is near the densest packing")],
 )
 def viscosity_suspension(
     volume_fraction: Number,
@@ -84,11 +94,12 @@ def viscosity_suspension(
 ) -> Number:
     """Viscosity of a suspension of rigid particles.
 
-    The defaults are random close packing and Einstein's 2.5 for spheres. Suspensions thin with shear: φ_m is about 0.63 at low
-    and 0.71 at high shear (common practice, no source). Dilute: µ_0 (1 + [η]_φ φ).
+    The defaults are random close packing and Einstein's 2.5 for spheres. Suspensions thin with shear: φ_m is
+    about 0.63 at low and 0.71 at high shear (common practice, no source). Dilute: µ_0 (1 + [η]_φ φ).
     """
-    filling = np.where(volume_fraction < maximum_volume_fraction, volume_fraction / maximum_volume_fraction, np.nan)
-    exponent = -intrinsic_viscosity_number * maximum_volume_fraction * np.log1p(-filling)
+    flows = np.where(volume_fraction < maximum_volume_fraction, volume_fraction, np.nan)
+    power = intrinsic_viscosity_number * maximum_volume_fraction
+    exponent = -power * np.log1p(-flows / maximum_volume_fraction)
     return solvent_viscosity * np.exp(np.where(exponent <= LARGEST_EXPONENT, exponent, np.nan))
 
 
@@ -97,7 +108,7 @@ def viscosity_suspension(
     equation="ρ = ρ_w + C (1 − v ρ_w)",
     source=f"definition of the partial specific volume, {TANFORD}; water density after IAPWS SR6-08(2011)",
     arguments={"temperature": SOLUTION_TEMPERATURE},
-    refuses=[OVERFULL],
+    refuses=[OVERFILLED],
     fitted=[LIQUID_RANGE],
 )
 def density_solution(
@@ -105,8 +116,8 @@ def density_solution(
 ) -> Number:
     """Density of an aqueous solution from the partial specific volume of its solute.
 
-    Exact for the apparent specific volume; the partial one is taken as constant with concentration. Salts beside the solute are
-    left out.
+    Exact for the apparent specific volume; the partial one is taken as constant with concentration. Salts
+    beside the solute are left out.
     """
     water = water_density(temperature)
     fits = np.where(concentration * partial_specific_volume <= 1.0, 1.0, np.nan)
@@ -135,19 +146,19 @@ def fraction_from_concentration(concentration: Number, solution_density: Number)
     result="volume_fraction",
     equation="φ = C v",
     source=f"definition of the partial specific volume, {TANFORD}",
-    refuses=[OVERFULL],
+    refuses=[OVERFILLED],
 )
 def volume_fraction(concentration: Number, partial_specific_volume: Number) -> Number:
     """Volume fraction of a dissolved or suspended solute.
 
-    With the partial specific volume it is the dry volume; with volume per dry mass of the swollen particle, the hydrodynamic
-    one.
+    With the partial specific volume it is the dry volume; with volume per dry mass of the swollen particle,
+    the hydrodynamic one.
     """
     fraction = concentration * partial_specific_volume
     return np.where(fraction <= 1.0, fraction, np.nan)[()]
 
 
-# --- size and diffusion ---------------------------------------------------------------------------------------------
+# --- size and diffusion -------------------------------------------------------------------------------------
 
 
 @worksheet_function(
@@ -160,8 +171,8 @@ def volume_fraction(concentration: Number, partial_specific_volume: Number) -> N
 def radius_dextran(molar_mass: Number) -> Number:
     """Stokes radius of a dextran in water.
 
-    A mean over the coil; branched dextrans of one molar mass differ. The range is an approximate one. Other published power
-    laws differ by a quarter: do not mix them within one sieving curve.
+    A mean over the coil; branched dextrans of one molar mass differ. The range is an approximate one. Other
+    published power laws differ by a quarter: do not mix them within one sieving curve.
     """
     return 0.33e-10 * (1e3 * molar_mass) ** 0.463
 
@@ -184,15 +195,17 @@ def radius_peg(molar_mass: Number) -> Number:
 @worksheet_function(
     result="solute_radius",
     equation="r_s = [3 M (v + h v_w)/(4 π N_A)]^⅓, v_w = 1 mL/g",
-    source=f"volume of the hydrated molecule, {TANFORD}; without hydration, "
-           "Erickson, Size and shape of protein molecules at the nanometer level, Biol. Proced. Online 11 (2009) 32",
+    source=f"volume of the hydrated molecule, {TANFORD}; without hydration, {ERICKSON}",
     dimensional="the volume of bound water is the round 1 mL/g",
 )
-def radius_protein(molar_mass: Number, partial_specific_volume: Number = 0.73e-3, hydration: Number = 0.3) -> Number:
+def radius_protein(
+    molar_mass: Number, partial_specific_volume: Number = 0.73e-3, hydration: Number = 0.3
+) -> Number:
     """Radius of a compact protein, as the equivalent hydrated sphere.
 
-    For globular proteins in water; no elongation, so the Stokes radius is larger: by 10 to 20 % for most. 0.3 g/g of bound water
-    is usual (common practice, no source); with hydration 0 it is the smallest radius possible.
+    For globular proteins in water, elongation left out: the Stokes radius is mostly larger, by up to a fifth
+    for compact proteins. 0.3 g/g of bound water is usual (common practice, no source); with hydration 0 it
+    is the smallest radius possible.
     """
     volume = molar_mass * (partial_specific_volume + hydration * BOUND_WATER_VOLUME) / AVOGADRO_CONSTANT
     return (3.0 * volume / (4.0 * pi)) ** (1.0 / 3.0)
@@ -231,15 +244,16 @@ def diffusion_stokes(solute_radius: Number, temperature: Number, viscosity: Numb
     equation="D/(cm²/s) = 8.34e-8 T/(µ M^⅓), T in K, µ in cP, M in g/mol",
     source=YOUNG,
     arguments={"temperature": SOLUTION_TEMPERATURE, "viscosity": SOLVENT_VISCOSITY},
-    cautions=[Rule(lambda molar_mass: molar_mass < 5.0 * (1 - 1e-9), "{molar_mass} is below 5 kDa, where the equation was not fitted")],
+    cautions=[Rule(lambda molar_mass: molar_mass < 5.0 * (1 - 1e-9),
+                   "{molar_mass} is below 5 kDa, where the equation was not fitted")],
     dimensional="correlation in its own units",
 )
 def diffusion_young(molar_mass: Number, temperature: Number, viscosity: Number) -> Number:
     """Diffusion coefficient of a globular protein from its molar mass.
 
-    Dilute; within about 20 % for most globular proteins. Chains that swell, such as dextran, diffuse more slowly: there it is
-    about 60 % high. In SI with M in kg/mol the constant is 8.34e-16, for 1 cm²/s is 1e-4 m²/s, 1 cP is 1e-3 Pa·s and the cube
-    root of 1000 is 10.
+    Dilute; within about 20 % for most globular proteins. Chains that swell diffuse more slowly: for a
+    dextran of 70 kDa it is 60 % high. In SI with M in kg/mol the constant is 8.34e-16, for 1 cm²/s is
+    1e-4 m²/s, 1 cP is 1e-3 Pa·s and the cube root of 1000 is 10.
     """
     return 8.34e-16 * temperature / (viscosity * molar_mass ** (1.0 / 3.0))
 
@@ -249,31 +263,33 @@ def diffusion_young(molar_mass: Number, temperature: Number, viscosity: Number) 
     equation="D/(m²/s) = 9.40e-15 T/(µ M^⅓), T in K, µ in Pa·s, M in g/mol",
     source=POLSON,
     arguments={"temperature": SOLUTION_TEMPERATURE, "viscosity": SOLVENT_VISCOSITY},
-    cautions=[Rule(lambda molar_mass: molar_mass < 1.0 * (1 - 1e-9), "{molar_mass} is below 1 kDa: the equation is for large molecules")],
+    cautions=[Rule(lambda molar_mass: molar_mass < 1.0 * (1 - 1e-9),
+                   "{molar_mass} is below 1 kDa: the equation is for large molecules")],
     dimensional="correlation in its own units",
 )
 def diffusion_polson(molar_mass: Number, temperature: Number, viscosity: Number) -> Number:
     """Diffusion coefficient of a large biological molecule from its molar mass.
 
-    Dilute, compact molecules; 15 % above the measured value for serum albumin, and always 13 % above diffusion_young. In SI with
-    M in kg/mol the constant is 9.40e-16, for the cube root of 1000 is 10.
+    Dilute, compact molecules; 15 % above the measured value for serum albumin, and always 13 % above
+    diffusion_young. In SI with M in kg/mol the constant is 9.40e-16, for the cube root of 1000 is 10.
     """
     return 9.40e-16 * temperature / (viscosity * molar_mass ** (1.0 / 3.0))
 
 
-# --- ions beside a charged protein ----------------------------------------------------------------------------------
+# --- ions beside a charged protein --------------------------------------------------------------------------
 
 
 @worksheet_function(
     result="donnan_ratio",
     equation="r = (1 − φ)[(1 + y²)^½ − y], y = |Z| C/[2 M m (1 − φ)], φ = C v",
     source=f"{STONER}; {BOLTON}; balances worked out anew",
-    arguments={"concentration": "Protein per volume of the whole retentate, the protein's own volume included",
+    arguments={"concentration": "Protein per volume of whole retentate, the protein's own volume included",
                "salt_concentration": replace(quantity("salt_concentration"), low=1e-9,
                                              meaning="Amount concentration of the 1:1 salt in the permeate")},
     refuses=[Rule(lambda concentration, partial_specific_volume: concentration * partial_specific_volume >= 1,
                   "{concentration} at {partial_specific_volume} leaves no room for the salt")],
-    remarks=[Rule(lambda charge_number: charge_number == 0, "no charge: the ratio is that of the excluded volume, for both ions")],
+    remarks=[Rule(lambda charge_number: charge_number == 0,
+                  "no charge: the ratio is that of the excluded volume, for both ions")],
 )
 def donnan_ratio(
     concentration: Number,
@@ -284,10 +300,12 @@ def donnan_ratio(
 ) -> Number:
     """Co-ion concentration in the retentate over that in the permeate, for a charged protein and a 1:1 salt.
 
-    The co-ion has the sign of the protein. At equilibrium across the membrane, as at the end of a diafiltration, with one
-    activity coefficient of the salt on both sides. `concentration` and both ion concentrations are per volume of whole solution;
-    the charges are neutralised in the share 1 − φ that the protein leaves free: there c₊ c₋ = m², c₊ − c₋ = −Z C/[M (1 − φ)].
-    `salt_concentration` is that of the permeate. The counter-ion's ratio is (1 − φ)²/r.
+    The co-ion has the sign of the protein. At equilibrium across the membrane, as at the end of a
+    diafiltration, with one activity coefficient of the salt on both sides. `concentration` is per volume of
+    whole retentate, protein included, and so is the ion concentration in the ratio; the charges are
+    neutralised in the share 1 − φ of that volume which the protein leaves free, where c₊ c₋ = m² and
+    c₊ − c₋ = −Z C/[M (1 − φ)]. `salt_concentration` is that of the permeate. The counter-ion's ratio is
+    (1 − φ)²/r.
     """
     free = 1.0 - concentration * partial_specific_volume
     free = np.where(free > 0.0, free, np.nan)
@@ -296,25 +314,29 @@ def donnan_ratio(
     return free * np.tan(0.5 * np.arctan2(salt_concentration, charge))
 
 
-# --- table ----------------------------------------------------------------------------------------------------------
+# --- table --------------------------------------------------------------------------------------------------
 
 
 @worksheet_function(
-    result_by=("property_name", {**PROPERTIES, **{name: entry for name, (_, _, entry) in CONDITIONS.items()}}),
+    result_by=("property_name", {**PROPERTIES, **{name: entry for name, (*_, entry) in CONDITIONS.items()}}),
     equation="a published value of the solute table",
     source="one for each value of the table; UF_WHY tells it",
     names={"solute": "Name of the solute, such as bovine serum albumin", "property_name": "Property"},
     choices={"property_name": (*PROPERTIES, *CONDITIONS)},
     remarks=[Rule(lambda solute: True, "where the value comes from",
-                  told=lambda solute, property_name: entry_of(solute, CONDITIONS.get(property_name, (property_name,))[0]).origin)],
+                  told=lambda solute, property_name: _row(solute, property_name).origin)],
     dimensional="a table of values",
 )
 def solute(solute: str, property_name: str) -> float:
     """A published property of a common solute; UF_WHY tells its source and conditions.
 
-    Names in any case. Osmotic coefficients belong to their temperature and range of concentration, which are properties too;
-    a diffusion coefficient belongs to water at diffusion_temperature, and goes with T/µ. A gel concentration depends on the
-    plant and is a guide only.
+    Names in any case. Osmotic coefficients belong to their temperature and range of concentration, which are
+    properties too; a diffusion coefficient belongs to water at diffusion_temperature, and goes with T/µ. A
+    gel concentration depends on the plant and is a guide only.
     """
-    name, field, _ = CONDITIONS.get(property_name, (property_name, "value", ""))
-    return getattr(entry_of(solute, name), field)
+    field = CONDITIONS[property_name][1] if property_name in CONDITIONS else "value"
+    return getattr(_row(solute, property_name), field)
+
+
+def _row(solute: str, property_name: str) -> Entry:
+    return entry_of(solute, CONDITIONS[property_name][0] if property_name in CONDITIONS else property_name)

@@ -11,9 +11,8 @@ from ..declaration import Column, Number, Rule, worksheet_function
 from ..errors import NoResult
 from ..quantities import quantity
 from ._cascade import SPLITS, Cascade, cascade, equal_permeate_limit, rated_logs, split_logs
-from ._flux_law import (
-    END_SLACK, GEL_CLEARANCE, HIGH_FLUX, FluxLaw, elementwise, gel_law, measured_law, refuse,
-)
+from ._elements import elementwise, refuse
+from ._flux_law import END_SLACK, GEL_CLEARANCE, HIGH_FLUX, FluxLaw, gel_law, measured_law
 from ._gel_model import (
     ABOVE_MEASURED, AT_GEL, BELOW_MEASURED, CHERYAN, GEL_MODEL, NO_MAXIMUM, NO_TRANSFER, POINTS,
 )
@@ -74,7 +73,7 @@ GEL_CASCADE_REFUSALS = [
 ]
 #: After all that can be told beforehand.
 NO_SPLIT = [
-    Rule(lambda split: split == "equal area", "{final_concentration} is out of reach with equal areas"),
+    Rule(lambda split: split != "least area", "{final_concentration} is out of reach with this split"),
     Rule(lambda split: split == "least area",
          "there is no least area: it falls on towards a stage that passes all it is fed, and the solute; "
          "take more stages, or the split equal area"),
