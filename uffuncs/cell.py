@@ -7,25 +7,20 @@ A result is a float, a text, an ErrorValue, or a block of these as a list of row
 from __future__ import annotations
 
 import math
-import re
 from collections.abc import Callable, Sequence
-from itertools import chain
 
 import numpy as np
 
 from .declaration import Argument, Function, Tool
-from .errors import CellError, ErrorValue, InvalidInput, NoResult, NotAvailable, OutOfBounds, UffuncsError
-from .quantities import Quantity
+from .errors import CellError, ErrorValue, InvalidInput, NoResult, NotAvailable, UffuncsError
+from .grids import Grid, grid
+from .reading import RANGES, flattened, is_blank, make_reader, unwrapped
 from .reasons import no_result_reason
 from .registry import find
-from .units import compile_unit
 
 #: Rows computed at a time: the arrays of one piece stay in the processor's cache.
 PIECE = 16384
 
-_RANGES = (list, tuple, np.ndarray)
-_NUMBER_TEXT = re.compile(r"\s*([-+−]?(?:\d+\.?\d*|\.\d+)(?:[eE][-+−]?\d+)?)\s*(.*?)\s*", re.DOTALL)
-_UNCERTAIN = re.compile(r"±|\+/-|\.\.")
 
 
 def call(name: str, cells: Sequence) -> object:
@@ -124,7 +119,7 @@ class CompiledFunction:
                 values += self.defaults[given:] if given >= self.minimum else [read(None) for read in self.readers[given:]]
         except UffuncsError:
             cells = self._completed(cells)
-            if any(type(cell) in _RANGES for cell in cells):
+            if any(type(cell) in RANGES for cell in cells):
                 return self.block(cells)
             values = [read(cell) for read, cell in zip(self.readers, cells)]
         return self.scalar(values)
@@ -173,12 +168,12 @@ class CompiledFunction:
         Two-dimensional arrays of floats may stand for ranges of cells.
         """
         columns = columns or {}
-        grids: list[_Grid] = []
+        grids: list[Grid] = []
         for i, (argument, read, cell) in enumerate(zip(self.record.arguments, self.readers, cells)):
             if i in columns:
-                grids.append(_Grid(columns[i], (1, 1), {}, single=True))
+                grids.append(Grid(columns[i], (1, 1), {}, single=True))
             else:
-                grids.append(_grid(argument, read, cell))
+                grids.append(grid(argument, read, cell))
         try:
             shape = np.broadcast_shapes(*(g.shape for g in grids))
         except ValueError:
@@ -262,19 +257,19 @@ class CompiledFunction:
         if self.record.block:
             values = []
             for i, (argument, read, cell) in enumerate(zip(self.record.arguments, self.readers, cells)):
-                if i not in columns and type(cell) in _RANGES:
+                if i not in columns and type(cell) in RANGES:
                     raise InvalidInput(f"{self.name}: {argument.name} takes one cell, not a range")
                 values.append(columns[i] if i in columns else read(cell))
             return self.table(values)
         rest = [cell for i, cell in enumerate(cells) if i not in columns]
-        if any(type(cell) in _RANGES for cell in rest):
+        if any(type(cell) in RANGES for cell in rest):
             return self.block([None if i in columns else cell for i, cell in enumerate(cells)], columns)
         return self.scalar([columns[i] if i in columns else read(cell)
                             for i, (read, cell) in enumerate(zip(self.readers, cells))])
 
     def _read_columns(self, cells: Sequence) -> dict[int, np.ndarray]:
         """Whole ranges, flattened; rows in which every paired range is blank are left out."""
-        given = {i: _flattened(cells[i]) for i in self.columns if not (is_blank(cells[i]) and not self.record.arguments[i].required)}
+        given = {i: flattened(cells[i]) for i in self.columns if not (is_blank(cells[i]) and not self.record.arguments[i].required)}
         columns = {i: self.record.arguments[i].default for i in self.columns if i not in given}
         for group in _column_groups(self.record, given):
             lengths = {len(given[i]) for i in group}
@@ -297,7 +292,7 @@ class CompiledFunction:
                 columns = self.body(*values)
         except UffuncsError as error:
             raise type(error)(f"{self.name}: {error}") from None
-        rows = max(len(c) if isinstance(c, _RANGES) else 1 for c in columns)
+        rows = max(len(c) if isinstance(c, RANGES) else 1 for c in columns)
         quantities = self.record.column_quantities(values)
         block = []
         for r in range(rows):
@@ -305,7 +300,7 @@ class CompiledFunction:
             # More columns than declared repeat the last entry.
             for n, column in enumerate(columns):
                 q = quantities[min(n, len(quantities) - 1)]
-                value = column[r] if isinstance(column, _RANGES) else column
+                value = column[r] if isinstance(column, RANGES) else column
                 row.append(value if isinstance(value, str) else _finite_or_error(q.from_si(float(value)), self.name))
             block.append(row)
         return block
@@ -332,32 +327,6 @@ def _check_count(record: Function | Tool, cells: Sequence):
         raise InvalidInput(f"{record.worksheet_name}: takes {most} arguments at most, got {len(cells)}")
 
 
-def is_blank(cell: object) -> bool:
-    return cell is None or (type(cell) is str and not cell.strip())
-
-
-def unwrapped(cell: object) -> object:
-    """A range of one cell counts as that cell; rows stay rows."""
-    if type(cell) in _RANGES:
-        if isinstance(cell, np.ndarray):
-            return cell.item() if cell.size == 1 else cell
-        if len(cell) == 0:
-            return None
-        if not isinstance(cell[0], _RANGES):
-            cell = [cell]
-        if len(cell) == 1 and len(cell[0]) == 1:
-            return cell[0][0]
-    return cell
-
-
-def _flattened(cell: object) -> list:
-    if isinstance(cell, np.ndarray):
-        return cell.ravel().tolist()
-    if isinstance(cell, (list, tuple)):
-        return list(chain.from_iterable(row if isinstance(row, (list, tuple)) else [row] for row in cell))
-    return [cell]
-
-
 def _column_cell(function: str, argument: Argument, read: Callable, cell: object, row: int):
     if is_blank(cell) and argument.kind != "labels":
         raise InvalidInput(f"{function}: {argument.name} is blank in row {row} of its range")
@@ -367,216 +336,6 @@ def _column_cell(function: str, argument: Argument, read: Callable, cell: object
         raise
     except UffuncsError as error:
         raise type(error)(f"{error} (row {row} of the range)") from None
-
-
-# --- grids: one argument of an elementwise call ---------------------------------------------------------------------
-
-
-class _Grid:
-    """One argument over a range: worksheet numbers (or texts), or one SI value for every element."""
-
-    def __init__(self, values, shape: tuple[int, int], errors: dict[tuple[int, int], ErrorValue], single: bool, is_text=False):
-        self.values, self.shape, self.errors, self.single, self.is_text = values, shape, errors, single, is_text
-
-    def flat(self, shape: tuple[int, int]):
-        if self.single:
-            return self.values
-        if self.shape == shape:
-            return self.values.reshape(-1)
-        return np.broadcast_to(self.values, shape).reshape(-1)
-
-    def errors_in(self, shape: tuple[int, int]) -> dict[tuple[int, int], ErrorValue]:
-        if not self.errors or self.shape == shape:
-            return self.errors
-        spread = {}
-        for (i, j), error in self.errors.items():
-            for r in range(shape[0]) if self.shape[0] == 1 else (i,):
-                for c in range(shape[1]) if self.shape[1] == 1 else (j,):
-                    spread[r, c] = error
-        return spread
-
-
-def _grid(argument: Argument, read: Callable, cell: object) -> _Grid:
-    if type(cell) not in _RANGES:
-        try:
-            return _Grid(read(cell), (1, 1), {}, single=True)
-        except UffuncsError as error:
-            return _Grid(np.full((1, 1), np.nan), (1, 1), {(0, 0): error.as_cell()}, single=False)
-    q = argument.quantity
-    if isinstance(cell, np.ndarray):
-        numbers = np.atleast_2d(cell.astype(float, copy=False))
-        numbers = numbers.T if cell.ndim == 1 else numbers
-        if q is not None:
-            return _Grid(numbers, numbers.shape, _outside(read, numbers, q), single=False)
-        cell = numbers.tolist()
-    rows = cell if isinstance(cell[0], _RANGES) else [cell]
-    width = max(map(len, rows))
-    if q is not None and all(len(r) == width for r in rows):
-        if {float, int}.issuperset(map(type, chain.from_iterable(rows))):
-            try:
-                numbers = np.array(rows, float)
-                return _Grid(numbers, numbers.shape, _outside(read, numbers, q), single=False)
-            except OverflowError:  # an integer too long for a float: told element by element
-                pass
-    return _mixed_grid(argument, read, rows, width)
-
-
-def _mixed_grid(argument: Argument, read: Callable, rows: Sequence[Sequence], width: int) -> _Grid:
-    """A range with blanks, texts or errors among the numbers: read cell by cell."""
-    q = argument.quantity
-    values = np.full((len(rows), width), np.nan) if q is not None else np.full((len(rows), width), "", object)
-    errors = {}
-    for i, row in enumerate(rows):
-        for j in range(width):
-            try:
-                value = read(row[j] if j < len(row) else None)
-                if value is None:  # an optional argument whose default the function works out itself
-                    raise InvalidInput(f"{argument.name} is blank in a range; fill it, or leave the argument out")
-                values[i, j] = q.from_si(value) if q is not None else value
-            except UffuncsError as error:
-                errors[i, j] = error.as_cell()
-    return _Grid(values, values.shape, errors, single=False, is_text=q is None)
-
-
-def _outside(read: Callable, numbers: np.ndarray, q: Quantity) -> dict[tuple[int, int], ErrorValue]:
-    """The elements outside the bounds; the common case of none costs two passes."""
-    if numbers.size == 0:
-        return {}
-    if q.low <= numbers.min() and numbers.max() <= q.high and not q.whole:  # false where there is a NaN
-        return {}
-    bad = ~((numbers >= q.low) & (numbers <= q.high))
-    if q.whole:
-        bad |= numbers != np.floor(numbers)
-    errors = {}
-    for i, j in np.argwhere(bad):
-        try:
-            read(float(numbers[i, j]))
-        except UffuncsError as error:
-            errors[int(i), int(j)] = error.as_cell()
-    return errors
-
-
-# --- readers: one cell to one SI value ------------------------------------------------------------------------------
-
-
-def make_reader(function: str, argument: Argument) -> Callable:
-    """A function from a cell value to the argument's SI value (or text); raises UffuncsError."""
-    if argument.kind in ("choice", "name", "labels"):
-        return _text_reader(function, argument)
-    q = argument.quantity
-    name, scale, offset, low, high = f"{function}: {argument.name}", q.scale, q.offset, q.low, q.high
-    default, required, whole = argument.default, argument.required, q.whole
-    texts: dict[str, float] = {}  # unit texts met before: a column of formulas repeats them
-
-    def read(cell):
-        kind = type(cell)
-        if kind is float or kind is int:
-            if low <= cell <= high and not whole:
-                return scale * cell + offset
-            return checked(cell, cell)
-        if kind is str and cell in texts:
-            return texts[cell]
-        return slow(cell)
-
-    def checked(number, given):
-        if not low <= number <= high:
-            raise OutOfBounds(f"{name} must be {q.bounds_text}; got {_shown(given)}")
-        if whole and number != math.floor(number):
-            raise OutOfBounds(f"{name} must be a whole number; got {_shown(given)}")
-        return scale * number + offset
-
-    def from_text(cell):
-        number, unit = split_number(name, cell, q.unit)
-        if unit in ("", q.unit) and not q.absolute:
-            return checked(number, cell)
-        try:
-            unit_scale, unit_offset = compile_unit(unit or q.unit, q.si_unit, q.absolute)
-        except InvalidInput as error:
-            raise InvalidInput(f"{name}: {error}") from None
-        value = unit_scale * number + unit_offset
-        shown = q.from_si(value)
-        if low < shown < high and not whole:
-            return value
-        # Twelve digits decide what a converted number such as "0.2 kbar" is on the bound itself.
-        return checked(float(f"{shown:.12g}"), cell)
-
-    def slow(cell):
-        if is_blank(cell):
-            if required:
-                raise InvalidInput(f"{name} is blank; give a number in {q.unit}, or a text such as '1 {q.unit}'")
-            return default
-        if isinstance(cell, ErrorValue):
-            raise CellError(cell)
-        if isinstance(cell, (bool, np.bool_)):
-            raise InvalidInput(f"{name} is {str(bool(cell)).upper()}; give a number in {q.unit}")
-        if isinstance(cell, str):
-            value = from_text(cell)
-            if len(texts) >= 4096:
-                texts.clear()
-            texts[cell] = value
-            return value
-        if isinstance(cell, (np.floating, np.integer)):
-            return read(cell.item())
-        raise InvalidInput(f"{name}: {type(cell).__name__} is not a cell value")
-
-    return read
-
-
-def _text_reader(function: str, argument: Argument) -> Callable:
-    name = f"{function}: {argument.name}"
-    choices = {c.casefold(): c for c in argument.choices}
-
-    def read(cell):
-        if is_blank(cell):
-            if argument.kind == "labels":
-                return ""
-            if argument.required:
-                raise InvalidInput(f"{name} is blank; give {_listed(argument)}")
-            return argument.default
-        if isinstance(cell, ErrorValue):
-            raise CellError(cell)
-        if isinstance(cell, (bool, np.bool_)):
-            raise InvalidInput(f"{name} is {str(bool(cell)).upper()}; give {_listed(argument)}")
-        text = cell.strip() if isinstance(cell, str) else f"{cell:g}"
-        if argument.kind == "choice":
-            if text.casefold() not in choices:
-                raise InvalidInput(f"{name} must be {_listed(argument)}; got {_shown(cell)}")
-            return choices[text.casefold()]
-        return text
-
-    return read
-
-
-def _listed(argument: Argument) -> str:
-    return "one of: " + ", ".join(argument.choices) if argument.choices else "a text"
-
-
-def split_number(name: str, text: str, unit: str) -> tuple[float, str]:
-    """A text such as "35 psi" as a number and its unit text.
-
-    Raises
-    ------
-    InvalidInput
-        Not a number, a decimal comma, or an uncertain value.
-    """
-    found = _NUMBER_TEXT.fullmatch(text)
-    if not found:
-        raise InvalidInput(f"{name}: {_shown(text)} is not a number with a unit, such as '1 {unit}'")
-    number, rest = found[1].replace("−", "-"), found[2]
-    if rest.startswith(","):
-        raise InvalidInput(f"{name}: {_shown(text)} has a comma; write the number with a decimal point and no other mark")
-    if _UNCERTAIN.search(rest):
-        raise InvalidInput(f"{name}: {_shown(text)} is an uncertain value; only UF_UNCERTAINTY takes those")
-    if (rest[:1].isdigit() and not rest.startswith("1/")) or rest[:1] in (".", "'"):
-        raise InvalidInput(f"{name}: {_shown(text)} is not one number with a unit")
-    return float(number), rest
-
-
-def _shown(cell: object) -> str:
-    if isinstance(cell, str):
-        cell = cell if len(cell) <= 40 else cell[:39] + "…"
-        return f"'{cell}'"
-    return f"{cell:.12g}" if isinstance(cell, float) else str(cell)
 
 
 def sanitized(value: object, name: str) -> object:

@@ -24,6 +24,7 @@ from typing import Annotated, Any
 
 import numpy as np
 
+from .errors import shortened
 from .quantities import VOCABULARY, Quantity
 
 #: An SI number or an array of them; functions broadcast like NumPy.
@@ -72,7 +73,7 @@ class Argument:
             text += ": " + ", ".join(self.choices)
         if self.kind == "column":
             text += "; a whole range"
-        return text if self.required else f"{text}; default {self.default_text}"
+        return shortened(text if self.required else f"{text}; default {self.default_text}")
 
 
 @dataclass(frozen=True)
@@ -413,7 +414,7 @@ def docstring(record: Function) -> str:
         lines += [f"{a.name} : {kind}{optional}", text + ("" if a.required else f" Default {a.default_text}.")]
     lines += ["", "Returns", "-------"]
     if record.block:
-        lines += [f"tuple, one entry per column, each a float or one-dimensional array:"]
+        lines += ["tuple, one entry per column, each a float or one-dimensional array:"]
         lines += [f"    {q.name}: {q.meaning}. [{q.si_unit}; worksheet: {q.unit}]" for q in record.results]
     elif record.result_by:
         lines += [f"float: by {record.result_by[0]}, in SI"]

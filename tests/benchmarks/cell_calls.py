@@ -30,8 +30,8 @@ def rows():
         ("one column", (si_pressure, 1e-3, 5e12), [pressure, 1.0, 5e12]),
     ):
         cells = cells + [None] * 4
-        body = seconds(lambda: uffuncs.flux_darcy(*bare_arguments), 15)
-        checked = seconds(lambda: compiled.arrays(cells), 15)
+        body = seconds(lambda a=bare_arguments: uffuncs.flux_darcy(*a), 15)
+        checked = seconds(lambda c=cells: compiled.arrays(c), 15)
         yield Row(f"1,000,000 rows, {label}: checked over bare NumPy body", checked / body, "times", 2)
     block = [[p] for p in pressure.tolist()]
     yield Row("1,000,000 rows as a spreadsheet's list of rows, in and out", seconds(lambda: call("UF_FLUX_DARCY", [block, 1, 5e12]), 3), "s")

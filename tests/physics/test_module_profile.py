@@ -191,7 +191,7 @@ def local_sherwood(channel):
 
 
 @pytest.mark.parametrize("case", ["spacer", "tube", "slit"])
-@pytest.mark.parametrize("rejection", [1.0, 0.95])
+@pytest.mark.parametrize("rejection", [1.0, 0.99])
 def test_against_an_independent_integration(case, rejection):
     """Another method (in x, with another solver of the flux), started a little inside the entrance of a laminar channel."""
     flow, start = 2 / 3600, 0.0
@@ -291,7 +291,7 @@ def test_how_often_the_flux_is_solved():
         run(module_profile_spacer, SPACER, 5 / 3600, points=100)
     finally:
         _march.March.flux = original
-    assert calls < 400
+    assert calls < 500
 
 
 # --- trends ----------------------------------------------------------------------------------------------------------
@@ -328,13 +328,13 @@ def test_any_feed_gives_a_balanced_profile_or_a_reason(flow, concentration, pres
 def test_refusals_with_their_place():
     with pytest.raises(NoResult, match="used up 0.[0-9]+ m from the inlet, before the outlet at 0.9 m"):
         run(module_profile_spacer, {**SPACER, "permeability": 100 * LMH_BAR}, 2 / 3600, feed_concentration=0.0)
-    with pytest.raises(NoResult, match="fallen to the permeate pressure"):
-        run(module_profile_spacer, SPACER, 25 / 3600, feed_pressure=1e5)
+    with pytest.raises(NoResult, match="pressure falls to the permeate pressure 0.[0-9]+ m from the inlet"):
+        run(module_profile_spacer, SPACER, 25 / 3600, feed_pressure=1e5, feed_concentration=0.0)
     with pytest.raises(NoResult, match="feed pressure does not exceed"):
         run(module_profile_tube, TUBE, 2 / 3600, feed_pressure=0.2e5)
     with pytest.raises(NoResult, match="osmotic pressure of the feed"):
         run(module_profile_tube, TUBE, 2 / 3600, feed_concentration=400.0)
-    with pytest.raises(NoResult, match="osmotic pressure of the bulk has risen"):
+    with pytest.raises(NoResult, match="osmotic pressure of the bulk reaches"):
         run(module_profile_slit, SLIT, 10 / 3600, feed_concentration=98.0, feed_pressure=0.7e5)
     with pytest.raises(NoResult, match="feed flow is 0"):
         run(module_profile_fiber, FIBER, 0.0)

@@ -18,9 +18,10 @@ from dataclasses import dataclass
 from functools import lru_cache
 from pathlib import Path
 
-from ..cell import call, split_number
+from ..cell import call
 from ..declaration import Function
 from ..errors import ErrorValue
+from ..reading import split_number
 from ..registry import find
 from ..units import compile_unit
 

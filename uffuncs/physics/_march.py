@@ -95,6 +95,8 @@ class March:
         bulk = o.feed_concentration * solute / flow
         if o.osmotic:
             flux = self.flux_osmotic(self.driving * pressure, o.permeability, k, bulk, *o.coefficients, o.intrinsic_rejection)
+            if flux != flux:
+                raise NoResult("several fluxes, or none, satisfy the osmotic law at one place: its coefficients bend it too far")
         else:
             flux = o.permeability * self.driving * pressure
         return flux, bulk, math.exp(-flux / k)
@@ -102,11 +104,11 @@ class March:
     def permeate_share(self, thinning: float) -> float:
         """Permeate over bulk concentration; `thinning` is exp(−J/k)."""
         r = self.operation.intrinsic_rejection
-        return 0.0 if r == 1.0 else (1.0 - r) / (r * thinning + 1.0 - r)
+        return 0.0 if r == 1.0 else (1.0 - r) / (r * thinning + (1.0 - r))
 
     def surface_concentration(self, bulk: float, thinning: float) -> float:
         r = self.operation.intrinsic_rejection
-        remaining = r * thinning + 1.0 - r
+        remaining = r * thinning + (1.0 - r)
         if bulk == 0.0:
             return 0.0
         if remaining < 1e-300:
@@ -131,11 +133,11 @@ class March:
 
         endings = [
             (lambda s, y: y[0] - USED_UP, "the feed flow is used up"),
-            (lambda s, y: y[2], "the pressure has fallen to the permeate pressure"),
+            (lambda s, y: y[2], "the pressure falls to the permeate pressure"),
         ]
         if self.operation.osmotic and self.operation.permeability > 0.0:
             endings.append((lambda s, y: self.net_driving(y),
-                            "the osmotic pressure of the bulk has risen to the transmembrane pressure, the flux is 0"))
+                            "the flux falls to 0, as the osmotic pressure of the bulk reaches the transmembrane pressure,"))
         for event, _ in endings:
             event.terminal = True
         found = solve_ivp(self.rates, (0.0, 1.0), [1.0, 1.0, 1.0, 0.0], method="DOP853", rtol=TOLERANCE, atol=SMALL,

@@ -27,11 +27,11 @@ class OsmoticTable:
         third = (slopes[:-1] + slopes[1:] - 2.0 * mean) / width**2
         #: π = p + t (a + t (b + t c)) from the knot on the left, t = c − knot
         self.pieces = np.column_stack([pressure[:-1], slopes[:-1], second, third])
-        self._knots, self._pieces = concentration.tolist(), self.pieces.tolist()
+        self._knots, self._pressures, self._pieces = concentration.tolist(), pressure.tolist(), self.pieces.tolist()
+        #: whether c·π′ nowhere falls: then π(C_w) − π(C_p) rises with C_w for every rejection
+        self.steepens = self._steepens()
 
-    @property
-    def steepens(self) -> bool:
-        """Whether c·π′ nowhere falls: then the difference of π between surface and permeate rises with c for every R."""
+    def _steepens(self) -> bool:
         # d(c π′)/dc = π′ + c π″ is a parabola in t on each piece: its ends and its vertex decide.
         left, (_, a, b, c) = self.knots[:-1], self.pieces.T
         width = np.diff(self.knots)
@@ -56,8 +56,15 @@ class OsmoticTable:
         slope = first + t * (2.0 * second + t * 3.0 * third)
         return p + t * (first + t * (second + t * third)), c * slope, c * (slope + c * (2.0 * second + 6.0 * t * third))
 
-    def concentration(self, pressure):
-        """About the concentration of an osmotic pressure: straight lines between the points."""
+    def about(self, pressure):
+        """About the concentration of an osmotic pressure, by straight lines; the highest beyond the table."""
+        if isinstance(pressure, float):
+            right = bisect_right(self._pressures, pressure)
+            if right == len(self._pressures):
+                return self.highest
+            left = right - 1
+            share = (pressure - self._pressures[left]) / (self._pressures[right] - self._pressures[left])
+            return self._knots[left] + share * (self._knots[right] - self._knots[left])
         return np.interp(pressure, self.pressures, self.knots)
 
 
@@ -75,8 +82,7 @@ def _knot_slopes(x: np.ndarray, y: np.ndarray) -> np.ndarray:
 
 def _end_slope(near_width: float, far_width: float, near: float, far: float) -> float:
     """Three-point slope at an end, cut so that the curve stays monotone."""
-    slope = ((2.0 * near_width + far_width) * near - near_width * far) / (near_width + far_width)
-    return min(max(slope, 0.0), 3.0 * near)
+    return max(((2.0 * near_width + far_width) * near - near_width * far) / (near_width + far_width), 0.0)
 
 
 def osmotic_table(concentration: np.ndarray, pressure: np.ndarray) -> OsmoticTable:

@@ -245,31 +245,32 @@ def _diavolumes_purity(
         return math.nan
     if target == 0:
         return 0.0
-    # 1/share = Σ w_i e^(−a_i N) is convex in N: it falls to its first crossing, or never crosses.
-    excess = rejection[row] - rejection  # sieving coefficient above the product's
-    weight = feed * factor**-excess / feed[row]
+    # The others over the product, Σ w_i e^(−a_i N), is convex in N: it falls to its first crossing, or never.
+    others = np.arange(len(feed)) != row
+    excess = (rejection[row] - rejection)[others]  # sieving coefficient above the product's
+    weight = feed[others] * factor**-excess / feed[row]
 
-    def inverse_share(n: float) -> float:
+    def ratio(n: float) -> float:
         return float(weight @ np.exp(np.minimum(-excess * n, 600.0)))
 
     def slope(n: float) -> float:
         return -float((weight * excess) @ np.exp(np.minimum(-excess * n, 600.0)))
 
-    wanted = 1.0 / target
-    if inverse_share(0.0) <= wanted * (1.0 + 1e-15):
+    wanted = (1.0 - target) / target
+    if ratio(0.0) <= wanted * (1.0 + 1e-15):
         return 0.0
-    if slope(0.0) >= 0:
+    if wanted == 0 or slope(0.0) >= 0:
         return math.nan
     from scipy.optimize import brentq
 
     high = 1.0
-    while inverse_share(high) > wanted:
+    while ratio(high) > wanted:
         if slope(high) >= 0:  # past the peak, which must then reach the target
             high = brentq(slope, 0.0, high, xtol=1e-14, rtol=1e-15)
-            if inverse_share(high) > wanted:
+            if ratio(high) > wanted:
                 return math.nan
             break
         high *= 2.0
         if high > 1e15:  # the share levels off below the target
             return math.nan
-    return brentq(lambda n: math.log(inverse_share(n) / wanted), 0.0, high, xtol=1e-14, rtol=1e-15)
+    return brentq(lambda n: math.log(ratio(n) / wanted), 0.0, high, xtol=1e-14, rtol=1e-15)

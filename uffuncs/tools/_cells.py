@@ -6,9 +6,9 @@ from collections.abc import Callable, Collection, Sequence
 
 import numpy as np
 
-from ..cell import is_blank, split_number, unwrapped
 from ..declaration import Function, Tool
 from ..errors import CellError, ErrorValue, InvalidInput, NotAvailable, UffuncsError
+from ..reading import is_blank, split_number, unwrapped
 from ..registry import find, near_names
 
 OWN = "This library"

@@ -7,6 +7,7 @@ from itertools import chain
 from .. import cell as contract
 from ..declaration import Function, Tool, cell_tool
 from ..errors import CellError, ErrorValue, InvalidInput, NotAvailable, shortened
+from ..reading import unwrapped
 from ..reasons import cautions, remarks
 from ..registry import TOPICS, functions
 from ..version import __version__
@@ -45,7 +46,7 @@ def _why_tool(record: Tool, cells) -> str | list[list[str]]:
         return [[_reason(record, v) or "ok" for v in row] for row in result]
     if reason := _reason(record, result):
         return reason
-    careful = record.caution(*map(contract.unwrapped, cells)) if record.caution else ""
+    careful = record.caution(*map(unwrapped, cells)) if record.caution else ""
     return shortened(f"caution: {careful}") if careful else "ok"
 
 

@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from ..cell import is_blank, split_number
 from ..declaration import cell_tool
 from ..errors import CellError, ErrorValue, InvalidInput, NoResult
+from ..reading import is_blank, split_number
 from ..units import WORKSHEET_UNITS, compile_unit, known_unit
 from ._cells import OWN, element_by_element, plain_number, plain_text
 

@@ -8,12 +8,13 @@ from dataclasses import replace
 
 import numpy as np
 
-from ..cell import compile_function, is_blank, make_reader
+from ..cell import compile_function
 from ..declaration import Argument, Function, cell_tool
 from ..errors import ErrorValue, InvalidInput, NoResult, NotAvailable, UffuncsError
 from ..quantities import Quantity
+from ..reading import is_blank, make_reader
 from ..reasons import cautions
-from ._cells import FUNCTION_NAME, OWN, element_by_element, function_named, plain_text
+from ._cells import FUNCTION_NAME, element_by_element, function_named, plain_text
 
 #: Points of the scan on each side of zero, evenly and by their logarithm: roots closer together than these are not told apart.
 SCAN = 200
@@ -147,8 +148,10 @@ def find_root(f: Callable, target: float, q: Quantity, shown: Callable[[float], 
             continue
         raise NoResult(f"the function is flat: every {q.name} from {q.shown(x[first])} to {q.shown(x[last])} gives the target")
     roots = [float(v) for v in x[exact]]
-    for i in np.flatnonzero(good[:-1] & good[1:] & (y[:-1] * y[1:] < 0)):
+    for i in np.flatnonzero(good[:-1] & good[1:] & (np.sign(y[:-1]) * np.sign(y[1:]) < 0)):
         roots += filter(None, [_refined(f, target, float(x[i]), float(x[i + 1]), scale)])
+    if not roots:  # a root on a bound may miss the target by rounding
+        roots = [float(x[i]) for i in ends if abs(y[i]) <= 1e-12 * scale]
     if not roots:
         raise NoResult(f"no {q.name} within {q.bounds_text} gives {shown(target)}: it is {at_bounds}")
     if len(roots) > 1:

@@ -5,14 +5,14 @@ from __future__ import annotations
 import math
 import re
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from functools import lru_cache
 
 import numpy as np
 
-from ..cell import compile_function, make_reader, split_number
+from ..cell import compile_function
 from ..declaration import Argument, Function, cell_tool
-from ..errors import CellError, ErrorValue, InvalidInput, NoResult, UffuncsError
+from ..errors import InvalidInput, NoResult, UffuncsError
 from ..units import compile_unit
 from ._cells import FUNCTION_NAME, function_named
 
