@@ -15,6 +15,7 @@ TOPICS = {
     "permeation": ("physics.permeation",),
     "rejection": ("physics.rejection",),
     "crossflow": ("physics.crossflow", "physics.crossflow_transfer", "physics.crossflow_pressure", "physics.module_profile",),
+    "polarization": ("physics.polarization", "physics.osmotic_flux",),
     "fouling": ("physics.fouling",),
     "concentration": ("physics.concentration", "physics.batch", "physics.diafiltration", "physics.campaign",),
     "plant": ("physics.plant", "physics.stages", "physics.cycles",),

@@ -28,8 +28,15 @@ def by_quadrature(feed, factor, transfer, gel, rejection, maximum=math.inf):
     length, start = math.log(factor), math.log(gel / feed)
     if rejection < 1e-3:
         kinks = [u for u in [(start - maximum / transfer) / rejection if rejection else -1] if 0 < u < length]
-        return quad(lambda u: math.exp(-u) / min(maximum, transfer * (start - rejection * u)), 0, length,
-                    points=kinks or None, epsabs=0, epsrel=1e-12, limit=500)[0]
+        return quad(
+            lambda u: math.exp(-u) / min(maximum, transfer * (start - rejection * u)),
+            0,
+            length,
+            points=kinks or None,
+            epsabs=0,
+            epsrel=1e-12,
+            limit=500,
+        )[0]
     end = start - rejection * length
 
     def integrand(w):
@@ -38,7 +45,9 @@ def by_quadrature(feed, factor, transfer, gel, rejection, maximum=math.inf):
 
     kink = math.log(maximum / transfer) if math.isfinite(maximum) else math.inf
     ends = sorted({math.log(end), math.log(start), min(max(kink, math.log(end)), math.log(start))})
-    return sum(quad(integrand, low, high, epsabs=0, epsrel=1e-12, limit=500)[0] for low, high in zip(ends, ends[1:]))
+    return sum(
+        quad(integrand, low, high, epsabs=0, epsrel=1e-12, limit=500)[0] for low, high in zip(ends, ends[1:])
+    )
 
 
 @given(factors, transfers, rejections, nearness, st.floats(0.2, 3))
@@ -54,8 +63,12 @@ def test_the_integral_with_and_without_a_kink(factor, transfer, rejection, end, 
 
 def test_full_rejection_is_the_difference_of_two_exponential_integrals():
     volume, feed, factor, area, transfer, gel = 10.0, 10.0, 20.0, 50.0, 20 * LMH, 300.0
-    expected = volume * feed / (area * transfer * gel) * (
-        expi(math.log(gel / feed)) - expi(math.log(gel / (feed * factor))))
+    expected = (
+        volume
+        * feed
+        / (area * transfer * gel)
+        * (expi(math.log(gel / feed)) - expi(math.log(gel / (feed * factor))))
+    )
     assert b.batch_time(volume, feed, factor, area, transfer, gel) == pytest.approx(expected, rel=1e-12)
 
 
@@ -83,7 +96,9 @@ def test_no_transfer_no_solute(why):
     assert "no flux" in why("UF_BATCH_TIME", 10, 10, 5, 50, 0, 300)
     assert "give maximum_flux" in why("UF_BATCH_TIME", 10, 0, 5, 50, 20, 300)
     # Pure solvent under a highest flux: permeate volume over area and flux.
-    assert b.batch_time(10.0, 0.0, 5.0, 50.0, 20 * LMH, 300.0, 1.0, 40 * LMH) == pytest.approx(8 / (50 * 40 * LMH))
+    assert b.batch_time(10.0, 0.0, 5.0, 50.0, 20 * LMH, 300.0, 1.0, 40 * LMH) == pytest.approx(
+        8 / (50 * 40 * LMH)
+    )
 
 
 def test_caution_above_clean_water_flux(why):
@@ -96,8 +111,9 @@ def test_caution_above_clean_water_flux(why):
 def test_a_batch_in_two_parts_takes_the_same_time(first, second, rejection, maximum):
     law = (20 * LMH, 5000.0)
     whole = b.batch_time(10.0, 10.0, first * second, 50.0, *law, rejection, maximum * LMH)
-    parts = (b.batch_time(10.0, 10.0, first, 50.0, *law, rejection, maximum * LMH)
-             + b.batch_time(10.0 / first, 10.0 * first**rejection, second, 50.0, *law, rejection, maximum * LMH))
+    parts = b.batch_time(10.0, 10.0, first, 50.0, *law, rejection, maximum * LMH) + b.batch_time(
+        10.0 / first, 10.0 * first**rejection, second, 50.0, *law, rejection, maximum * LMH
+    )
     assert parts == pytest.approx(whole, rel=1e-12)
 
 
@@ -113,9 +129,12 @@ def test_against_the_differential_equation():
         return state[0] - 0.5
 
     reached.terminal = True
-    solution = solve_ivp(rates, (0, 1e6), [10.0, 10.0], events=reached, rtol=1e-10, atol=1e-12, max_step=100.0)
+    solution = solve_ivp(
+        rates, (0, 1e6), [10.0, 10.0], events=reached, rtol=1e-10, atol=1e-12, max_step=100.0
+    )
     assert b.batch_time(10.0, 10.0, 20.0, area, transfer, gel, rejection, maximum) == pytest.approx(
-        solution.t_events[0][0], rel=1e-8)
+        solution.t_events[0][0], rel=1e-8
+    )
     assert solution.y[1][-1] == pytest.approx(10.0 * 20.0**rejection, rel=1e-8)
 
 
@@ -123,7 +142,8 @@ def test_against_the_differential_equation():
 def test_area_and_time_undo_each_other(factor, rejection, maximum):
     area = b.batch_area(10.0, 1.0, factor, 4 * HOUR, 20 * LMH, 1e5, rejection, maximum * LMH)
     assert b.batch_time(10.0, 1.0, factor, area, 20 * LMH, 1e5, rejection, maximum * LMH) == pytest.approx(
-        4 * HOUR, rel=1e-12)
+        4 * HOUR, rel=1e-12
+    )
 
 
 @given(factors, rejections, nearness)
@@ -155,27 +175,38 @@ def test_ranges_equal_single_values():
     assert block.shape == (3, 2) and np.isnan(block[2]).all()
     for i in range(2):
         for j in range(2):
-            assert block[i, j] == b.batch_time(10.0, float(feed[i, 0]), float(factor[j]), 50.0, 20 * LMH, 300.0, 0.9)
+            assert block[i, j] == b.batch_time(
+                10.0, float(feed[i, 0]), float(factor[j]), 50.0, 20 * LMH, 300.0, 0.9
+            )
 
 
-# --- measured fluxes ---------------------------------------------------------------------------------------
+# --- measured fluxes ------------------------------------------------------------------------------------
 
 
 def gel_points(transfer, gel, maximum, *concentrations):
-    c = np.array([*concentrations, gel * math.exp(-maximum / transfer)] if math.isfinite(maximum) else concentrations)
+    c = np.array(
+        [*concentrations, gel * math.exp(-maximum / transfer)] if math.isfinite(maximum) else concentrations
+    )
     return c, np.minimum(maximum, transfer * np.log(gel / c))
 
 
-@given(factors, st.floats(0, 1), st.sampled_from([math.inf, 30 * LMH, 70 * LMH]), st.randoms(use_true_random=False))
+@given(
+    factors,
+    st.floats(0, 1),
+    st.sampled_from([math.inf, 30 * LMH, 70 * LMH]),
+    st.randoms(use_true_random=False),
+)
 def test_points_of_the_gel_model_give_its_times(factor, rejection, maximum, random):
     transfer, gel = 20 * LMH, 1e6
     c, j = gel_points(transfer, gel, maximum, 0.5, 1.0, 7.0, 400.0, 1.0001e4)
     order = random.sample(range(len(c)), len(c))
     limit = None if maximum == math.inf else maximum
     assert b.batch_time_table(10.0, 1.0, factor, 50.0, c[order], j[order], rejection) == pytest.approx(
-        b.batch_time(10.0, 1.0, factor, 50.0, transfer, gel, rejection, limit), rel=1e-11)
+        b.batch_time(10.0, 1.0, factor, 50.0, transfer, gel, rejection, limit), rel=1e-11
+    )
     assert b.batch_area_table(10.0, 1.0, factor, HOUR, c[order], j[order], rejection) == pytest.approx(
-        b.batch_area(10.0, 1.0, factor, HOUR, transfer, gel, rejection, limit), rel=1e-11)
+        b.batch_area(10.0, 1.0, factor, HOUR, transfer, gel, rejection, limit), rel=1e-11
+    )
 
 
 C, J = np.array([5.0, 20.0, 60.0, 120.0, 250.0]), np.array([60.0, 64.0, 30.0, 18.0, 3.0]) * LMH
@@ -189,8 +220,9 @@ def test_measured_points_against_quadrature(rejection):
         return np.interp(math.log(12.0) + rejection * u, np.log(C), J)
 
     kinks = [u for u in (np.log(C / 12.0) / rejection if rejection else []) if 0 < u < math.log(factor)]
-    expected = quad(lambda u: math.exp(-u) / flux(u), 0, math.log(factor), points=kinks or None, epsabs=0,
-                    epsrel=1e-12)[0]
+    expected = quad(
+        lambda u: math.exp(-u) / flux(u), 0, math.log(factor), points=kinks or None, epsabs=0, epsrel=1e-12
+    )[0]
     assert b.batch_time_table(1.0, 12.0, factor, 1.0, C, J, rejection) == pytest.approx(expected, rel=1e-10)
 
 
@@ -213,7 +245,7 @@ def test_points_that_are_no_curve():
         b.batch_time_table(10.0, 10.0, 2.0, 50.0, np.append(C, 0.0), np.append(J, 1.0))
 
 
-# --- the two elementary integrals --------------------------------------------------------------------------
+# --- the two elementary integrals -----------------------------------------------------------------------
 
 
 @given(st.floats(1e-6, 10), st.floats(-9, 9), st.floats(-9, 1.06))
@@ -224,8 +256,14 @@ def test_elementary_integrals(start, log_ratio, log_length):
         if end == start:
             return quad(weight, 0, length, epsabs=0, epsrel=1e-12)[0] / start
         slope = (end - start) / length
-        return quad(lambda w: weight((math.exp(w) - start) / slope) / slope, math.log(start), math.log(end),
-                    epsabs=0, epsrel=1e-12, limit=400)[0]
+        return quad(
+            lambda w: weight((math.exp(w) - start) / slope) / slope,
+            math.log(start),
+            math.log(end),
+            epsabs=0,
+            epsrel=1e-12,
+            limit=400,
+        )[0]
 
     if 0 < abs(end - start) < 1e-4 * start:  # the reference itself loses digits there: a series instead
         mean, change = 0.5 * (start + end), (end - start) / start
@@ -243,15 +281,18 @@ def test_the_elementary_integral_has_no_seam():
             assert below == pytest.approx(above, rel=5e-13)
 
 
-# --- the campaign --------------------------------------------------------------------------------------------
+# --- the campaign ---------------------------------------------------------------------------------------
 
 LAW = (20 * LMH, 300.0)
 
 
-@pytest.mark.parametrize("rejection, sieving, maximum", [(1.0, 1.0, None), (0.98, 0.9, None), (0.99, 0.5, 40 * LMH)])
+@pytest.mark.parametrize(
+    "rejection, sieving, maximum", [(1.0, 1.0, None), (0.98, 0.9, None), (0.99, 0.5, 40 * LMH)]
+)
 def test_a_campaign_adds_up_to_its_steps(rejection, sieving, maximum):
     time, volume, product, impurity, kept, flux = campaign_module.campaign(
-        10.0, 10.0, 5.0, 6.0, 3.0, 50.0, *LAW, rejection, sieving, maximum)
+        10.0, 10.0, 5.0, 6.0, 3.0, 50.0, *LAW, rejection, sieving, maximum
+    )
     washed = product[0] * math.exp(-(1 - rejection) * 6.0)
     assert time[0] == b.batch_time(10.0, 10.0, 5.0, 50.0, *LAW, rejection, maximum)
     assert time[1] == d.diafiltration_time(2.0, product[0], 6.0, 50.0, *LAW, 1 - rejection, maximum)

@@ -17,9 +17,11 @@ shares = st.floats(0, 1)
 @given(st.floats(0, 2000), factors, shares)
 def test_what_is_kept_is_concentration_times_volume(feed, factor, rejection):
     assert c.concentration_batch(feed, factor, rejection) == pytest.approx(
-        feed * factor * c.yield_batch(factor, rejection), rel=1e-12)
+        feed * factor * c.yield_batch(factor, rejection), rel=1e-12
+    )
     assert c.concentration_continuous(feed, factor, rejection) == pytest.approx(
-        feed * factor * c.yield_continuous(factor, rejection), rel=1e-12)
+        feed * factor * c.yield_continuous(factor, rejection), rel=1e-12
+    )
 
 
 @given(factors, shares)
@@ -30,14 +32,19 @@ def test_a_batch_keeps_more_than_a_mixed_stage(factor, rejection):
 def test_limits():
     assert c.yield_batch(20.0, 1.0) == c.yield_continuous(20.0, 1.0) == 1.0
     assert c.yield_batch(20.0, 0.0) == c.yield_continuous(20.0, 0.0) == pytest.approx(0.05)
-    assert c.concentration_batch(10.0, 20.0, 0.0) == c.concentration_continuous(10.0, 20.0, 0.0) == pytest.approx(10)
+    assert (
+        c.concentration_batch(10.0, 20.0, 0.0)
+        == c.concentration_continuous(10.0, 20.0, 0.0)
+        == pytest.approx(10)
+    )
 
 
 def test_many_mixed_stages_are_a_batch():
     """A cascade of ever smaller mixed stages is plug flow, and that is a batch."""
     rejection, stages = 0.9, 20000
     assert c.yield_continuous(20.0 ** (1 / stages), rejection) ** stages == pytest.approx(
-        c.yield_batch(20.0, rejection), rel=1e-4)
+        c.yield_batch(20.0, rejection), rel=1e-4
+    )
 
 
 def test_a_concentration_factor_below_one_is_a_caution(why):
@@ -46,7 +53,7 @@ def test_a_concentration_factor_below_one_is_a_caution(why):
     assert "1 to 100000" in why("UF_CONCENTRATION_BATCH", 10, 0.5)
 
 
-# --- components ----------------------------------------------------------------------------------------------
+# --- components -----------------------------------------------------------------------------------------
 
 FEED, REJECTION = np.array([35.0, 48.0, 7.0, 0.0]), np.array([0.995, 0.03, 0.4, 0.5])
 NAMES = ["protein", "sugar", "salts", "none"]
@@ -57,14 +64,19 @@ NAMES = ["protein", "sugar", "salts", "none"]
 def test_every_component_is_conserved(mode, factor, diavolumes):
     retentate, permeate, kept, share = c.composition(NAMES, FEED, REJECTION, factor, diavolumes, mode)
     volume, permeate_volume = 1 / factor, 1 - 1 / factor + diavolumes / factor
-    assert retentate * volume + permeate * permeate_volume == pytest.approx(np.append(FEED, FEED.sum()), rel=1e-8)
+    assert retentate * volume + permeate * permeate_volume == pytest.approx(
+        np.append(FEED, FEED.sum()), rel=1e-8
+    )
     assert share[:-1].sum() == pytest.approx(1) and share[-1] == 1
-    assert retentate[-1] == pytest.approx(retentate[:-1].sum()) and permeate[-1] == pytest.approx(permeate[:-1].sum())
+    assert retentate[-1] == pytest.approx(retentate[:-1].sum()) and permeate[-1] == pytest.approx(
+        permeate[:-1].sum()
+    )
     assert kept[-1] * FEED.sum() == pytest.approx((kept[:-1] * FEED).sum())
 
 
 def test_components_of_a_batch_against_the_differential_equation():
     """First dV/dt = −1 to V_0/5, then water in at the rate of the permeate, for three diavolumes."""
+
     def concentrating(t, mass):
         return -(1 - REJECTION) * mass / (1 - t)
 
@@ -93,7 +105,7 @@ def test_an_empty_feed(why):
     assert "all feed concentrations are 0" in why("UF_COMPOSITION", [["a"], ["b"]], [[0], [0]], [[1], [0]], 5)
 
 
-# --- scale and flush -----------------------------------------------------------------------------------------
+# --- scale and flush ------------------------------------------------------------------------------------
 
 
 def test_flush_limits_and_growth():
@@ -109,4 +121,6 @@ def test_flush_limits_and_growth():
 def test_scaled_area_keeps_the_mean_flux():
     area = c.area_scaled(2.0, 0.1, 3.0, 3600.0, 7200.0)
     assert 3.0 / (area * 7200.0) == pytest.approx(0.1 / (2.0 * 3600.0))
-    assert c.loading(3.0, 5.0, c.area_scaled(2.0, 0.1, 3.0, 60.0, 60.0)) == pytest.approx(c.loading(0.1, 5.0, 2.0))
+    assert c.loading(3.0, 5.0, c.area_scaled(2.0, 0.1, 3.0, 60.0, 60.0)) == pytest.approx(
+        c.loading(0.1, 5.0, 2.0)
+    )

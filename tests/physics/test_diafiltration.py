@@ -42,11 +42,12 @@ def test_a_step_is_a_dilution_and_a_batch():
     assert d.diafiltration_steps(0.5, 4.0, 0.3) == pytest.approx(once**4)
 
 
-# --- the optimum -------------------------------------------------------------------------------------------------
+# --- the optimum ----------------------------------------------------------------------------------------
 
 
 def test_the_optimum_takes_the_least_time():
     """The time to wash one mass of product, V = m/C, is least there; by a search of its own."""
+
     def time(concentration):
         return d.diafiltration_time(100.0 / concentration, concentration, 5.0, 50.0, 20 * LMH, 300.0)
 
@@ -69,24 +70,37 @@ def test_the_optimum_on_measured_points(why):
     assert "end of the measured range" in why("UF_DIAFILTRATION_OPTIMUM_TABLE", *rising)
 
 
-# --- time --------------------------------------------------------------------------------------------------------
+# --- time -----------------------------------------------------------------------------------------------
 
 
-@given(st.floats(1e-3, 290), st.floats(0.01, 50), st.sampled_from([0.0, 1e-12, 1e-3, 0.3, 1.0]), st.floats(1, 150))
+@given(
+    st.floats(1e-3, 290),
+    st.floats(0.01, 50),
+    st.sampled_from([0.0, 1e-12, 1e-3, 0.3, 1.0]),
+    st.floats(1, 150),
+)
 def test_time_against_quadrature(start, diavolumes, sieving, maximum):
     distance = math.log(300 / start)
     for limit in (None, maximum * LMH):
         top = limit or math.inf
         kink = (top / (20 * LMH) - distance) / sieving if sieving else -1
-        expected = quad(lambda n: 1 / min(top, 20 * LMH * (distance + sieving * n)), 0, diavolumes, epsabs=0,
-                        epsrel=1e-11, points=[kink] if 0 < kink < diavolumes else None, limit=200)[0]
+        expected = quad(
+            lambda n: 1 / min(top, 20 * LMH * (distance + sieving * n)),
+            0,
+            diavolumes,
+            epsabs=0,
+            epsrel=1e-11,
+            points=[kink] if 0 < kink < diavolumes else None,
+            limit=200,
+        )[0]
         found = d.diafiltration_time(2.0, start, diavolumes, 50.0, 20 * LMH, 300.0, sieving, limit)
         assert found == pytest.approx(2.0 / 50.0 * expected, rel=1e-9)
 
 
 def test_a_retained_product_keeps_its_flux():
     assert d.diafiltration_time(2.0, 100.0, 6.0, 50.0, 20 * LMH, 300.0) == pytest.approx(
-        2.0 * 6.0 / (50.0 * 20 * LMH * math.log(3)), rel=1e-14)
+        2.0 * 6.0 / (50.0 * 20 * LMH * math.log(3)), rel=1e-14
+    )
 
 
 def test_reasons(why):
@@ -106,11 +120,13 @@ def test_points_of_the_gel_model_give_its_time(start, diavolumes, sieving):
     j = np.minimum(2.0, np.log(300.0 / c)) * 20 * LMH
     found = d.diafiltration_time_table(2.0, start, diavolumes, 50.0, c, j, sieving)
     assert found == pytest.approx(
-        d.diafiltration_time(2.0, start, diavolumes, 50.0, 20 * LMH, 300.0, sieving, 40 * LMH), rel=1e-10)
+        d.diafiltration_time(2.0, start, diavolumes, 50.0, 20 * LMH, 300.0, sieving, 40 * LMH), rel=1e-10
+    )
 
 
 def test_washing_out_against_the_differential_equation():
     """dC/dt = −S C J A/V with the flux of the moment: the concentration arrives at e^(−S N) at the time found."""
+
     def rate(_, c):
         return -0.4 * c * min(30 * LMH, 20 * LMH * math.log(300 / c[0])) * 50.0 / 2.0
 
@@ -119,7 +135,7 @@ def test_washing_out_against_the_differential_equation():
     assert final == pytest.approx(150.0 * math.exp(-0.4 * 3.0), rel=1e-7)
 
 
-# --- purity ------------------------------------------------------------------------------------------------------
+# --- purity ---------------------------------------------------------------------------------------------
 
 FEED, REJECTION = np.array([35.0, 48.0, 7.0]), np.array([0.99, 0.02, 0.3])
 
@@ -153,13 +169,17 @@ def test_a_peak_is_crossed_at_its_near_side():
     shares_ = c[1] / c.sum(axis=0)
     peak = shares_.max()
     n = d.diavolumes_purity(feed, rejection, 2.0, 1.0, peak - 1e-4)
-    assert n < grid[shares_.argmax()] and n == pytest.approx(grid[np.argmax(shares_ >= peak - 1e-4)], abs=2e-4)
+    assert n < grid[shares_.argmax()] and n == pytest.approx(
+        grid[np.argmax(shares_ >= peak - 1e-4)], abs=2e-4
+    )
     assert math.isnan(d.diavolumes_purity(feed, rejection, 2.0, 1.0, float(peak) + 1e-6))
 
 
 def test_out_of_reach(why):
     ranges = [[[35], [48], [7]], [[0.99], [0.02], [0.99]]]
-    assert "out of reach" in why("UF_DIAVOLUMES_PURITY", *ranges, 1, 5, 0.9)  # the salts stay as the protein does
+    assert "out of reach" in why(
+        "UF_DIAVOLUMES_PURITY", *ranges, 1, 5, 0.9
+    )  # the salts stay as the protein does
     assert "out of reach" in why("UF_DIAVOLUMES_PURITY", *ranges, 2, 5, 0.9)  # the sugar is what leaves
     assert "out of reach" in why("UF_DIAVOLUMES_PURITY", *ranges, 1, 5, 1)
     assert "beyond the rows" in why("UF_DIAVOLUMES_PURITY", *ranges, 4, 5, 0.5)

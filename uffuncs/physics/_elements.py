@@ -20,11 +20,11 @@ def elementwise(function: Callable, *arguments):
     return np.array(values, float).reshape(grids[0].shape)
 
 
-def above_zero(value: Number) -> Number:
-    """The value itself, NaN where it is not above 0: a divisor, or a share that must leave something."""
+def above_zero(value: Number, rounding: float = 0.0) -> Number:
+    """The value itself, NaN where it is not above 0 by more than `rounding`: for divisors and what is left of 1."""
     if isinstance(value, np.ndarray):
-        return np.where(value > 0, value, np.nan)
-    return value if value > 0 else np.nan
+        return np.where(value > rounding, value, np.nan)
+    return value if value > rounding else np.nan
 
 
 def refuse(rules: list[Rule], **values):

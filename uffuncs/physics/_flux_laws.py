@@ -141,13 +141,17 @@ def _polynomial_brackets(law, darcy, transfer, bulk, rejection):
     return single_bracket(nodes, excess)
 
 
-def polynomial_solutions(pressure, permeability, transfer, bulk, b1, b2, b3, rejection, reflection) -> int:
-    """How many fluxes solve the equation, for the reason of a refusal."""
-    factor = permeability * reflection * rejection
-    law = tuple(np.array([factor * d]) for d in _difference_coefficients(b1, b2, b3, rejection))
-    row = (np.array([v]) for v in (permeability * pressure, transfer, bulk, rejection))
+def several_by_polynomial(
+    transmembrane_pressure, permeability, mass_transfer_coefficient, bulk_concentration,
+    first_coefficient, second_coefficient, third_coefficient, intrinsic_rejection, reflection_coefficient,
+) -> bool:
+    """Whether several fluxes solve the equation, for the reason of a refusal."""
+    factor = permeability * reflection_coefficient * intrinsic_rejection
+    coefficients = first_coefficient, second_coefficient, third_coefficient
+    law = tuple(np.array([factor * d]) for d in _difference_coefficients(*coefficients, intrinsic_rejection))
+    row = permeability * transmembrane_pressure, mass_transfer_coefficient, bulk_concentration, intrinsic_rejection
     with np.errstate(all="ignore"):
-        return int(_polynomial_brackets(law, *row)[2][0])
+        return bool(_polynomial_brackets(law, *(np.array([v]) for v in row))[2][0] > 1)
 
 
 # --- power law -----------------------------------------------------------------------------------------------------
@@ -291,9 +295,13 @@ def _table_brackets(table, law, darcy, transfer, bulk, rejection):
     return single_bracket(nodes, excess)
 
 
-def table_solutions(pressure, permeability, transfer, bulk, table, rejection, reflection) -> int:
-    """How many fluxes solve the equation within the table, for the reason of a refusal."""
-    law = np.array([permeability * reflection]), np.array([1.0 - rejection])
-    row = (np.array([v]) for v in (permeability * pressure, transfer, bulk, rejection))
+def several_by_table(
+    transmembrane_pressure, permeability, mass_transfer_coefficient, bulk_concentration,
+    concentration, osmotic_pressure, intrinsic_rejection, reflection_coefficient,
+) -> bool:
+    """Whether several fluxes solve the equation within the table, for the reason of a refusal."""
+    law = np.array([permeability * reflection_coefficient]), np.array([1.0 - intrinsic_rejection])
+    row = permeability * transmembrane_pressure, mass_transfer_coefficient, bulk_concentration, intrinsic_rejection
+    table = OsmoticTable.of(concentration, osmotic_pressure)
     with np.errstate(all="ignore"):
-        return int(_table_brackets(table, law, *row)[2][0])
+        return bool(_table_brackets(table, law, *(np.array([v]) for v in row))[2][0] > 1)

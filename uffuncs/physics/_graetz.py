@@ -1,8 +1,9 @@
 """Laminar mass transfer at constant wall value in a tube and between two plates: the exact Sherwood numbers.
 
-Fully developed parabolic velocity, mixed inlet, no diffusion along the channel. The mixing-cup excess over the wall, θ, is a
-sum of exponentials of 1/Gz, Gz = Re Sc d/L with the hydraulic diameter d (2h between plates); near the inlet that sum
-converges slowly and the expansion of Lévêque takes over: θ = 1 − Σ c_j Gz^(−j/3), j = 2, 3, …
+Fully developed parabolic velocity, mixed inlet, no diffusion along the channel. The mixing-cup excess over
+the wall, θ, is a sum of exponentials of 1/Gz, Gz = Re Sc d/L with the hydraulic diameter d (2h between
+plates); near the inlet that sum converges slowly and the expansion of Lévêque takes over: θ = 1 − Σ c_j
+Gz^(−j/3), j = 2, 3, …
 """
 
 from __future__ import annotations
@@ -35,7 +36,8 @@ class Channel:
     @cached_property
     def terms(self) -> tuple[tuple[float, float], ...]:
         """Decay beyond that of the first term, and weight, of the further terms."""
-        return tuple((self.rate * e**2 - self.first_decay, w) for e, w in zip(self.eigenvalues[1:], self.weights[1:]))
+        further = zip(self.eigenvalues[1:], self.weights[1:])
+        return tuple((self.rate * e**2 - self.first_decay, w) for e, w in further)
 
     @cached_property
     def coefficients(self) -> tuple[float, ...]:
@@ -48,11 +50,11 @@ class Channel:
         return tuple(reversed([c * (j + 2) / 3.0 for j, c in enumerate(self.entrance)]))
 
 
-# Eigenvalues and weights: zeros of Kummer's function in 60-digit arithmetic, W_n from the derivatives at the wall; compare
-# Brown, AIChE J. 6 (1960) 179. Entrance coefficients: the boundary-layer expansion in wall coordinates, in the manner of
-# Newman's extension of Lévêque's solution, its ordinary differential equations solved by Chebyshev collocation in 40-digit
-# arithmetic; c_2 follows from Γ(4/3), c_3 is exact. Against the sum with 130 terms the average is within 1e-9 at any Gz, the
-# local value within 6e-9.
+# Eigenvalues and weights: zeros of Kummer's function in 60-digit arithmetic, W_n from the derivatives at the
+# wall; compare Brown, AIChE J. 6 (1960) 179. Entrance coefficients: the boundary-layer expansion in wall
+# coordinates, in the manner of Newman's extension of Lévêque's solution, its ordinary differential equations
+# solved by Chebyshev collocation in 40-digit arithmetic; c_2 follows from Γ(4/3), c_3 is exact. Against the
+# sum with 130 terms the average is within 1e-9 at any Gz, the local value within 6e-9.
 TUBE = Channel(
     rate=2.0,
     eigenvalues=(2.7043644198825, 6.6790314493466, 10.673379538054, 14.671078462736, 18.669871864451,
@@ -69,10 +71,10 @@ TUBE = Channel(
 )
 PLATES = Channel(
     rate=32.0 / 3.0,
-    eigenvalues=(1.681595322239, 5.6698573458951, 9.6682424625104, 13.667661442608, 17.667373565349, 21.667205324325,
-                 25.667096486334, 29.667021044686, 33.666966068666, 37.666924456265),
-    weights=(0.9103521682288, 0.05314254972174, 0.01527892730486, 0.00680881881342, 0.003739798632987, 0.00232261970768,
-             0.001564096485556, 0.001115511175161, 0.0008303902494204, 0.0006390008395384),
+    eigenvalues=(1.681595322239, 5.6698573458951, 9.6682424625104, 13.667661442608, 17.667373565349,
+                 21.667205324325, 25.667096486334, 29.667021044686, 33.666966068666, 37.666924456265),
+    weights=(0.9103521682288, 0.05314254972174, 0.01527892730486, 0.00680881881342, 0.003739798632987,
+             0.00232261970768, 0.001564096485556, 0.001115511175161, 0.0008303902494204, 0.0006390008395384),
     entrance=(7.3953034893087, -1.6, -0.8021497560254, -0.7362435473801, -0.8804635803078, -1.23648985298,
               -1.94479717012, -3.33711986765, -6.14566644131, -12.0123784414, -24.7200482874),
     change=1000.0,
@@ -81,10 +83,12 @@ CHANNELS = {"tube": TUBE, "slit": PLATES}
 
 
 def average(graetz: Number, channel: Channel) -> Number:
-    """Sherwood number averaged from the inlet to a length, from the logarithmic mean difference; any Gz ≥ 0."""
+    """Sherwood number averaged from the inlet, on the logarithmic mean difference; any Gz ≥ 0."""
     if isinstance(graetz, np.ndarray):
-        return np.where(graetz < channel.change, _sum_average(graetz, channel, np), _entrance_average(graetz, channel, np))
-    return _sum_average(graetz, channel, math) if graetz < channel.change else _entrance_average(graetz, channel, math)
+        return np.where(graetz < channel.change, _sum_average(graetz, channel, np),
+                        _entrance_average(graetz, channel, np))
+    law = _sum_average if graetz < channel.change else _entrance_average
+    return law(graetz, channel, math)
 
 
 def _sum_average(graetz, channel, m):
@@ -96,7 +100,8 @@ def _sum_average(graetz, channel, m):
 
 
 def _entrance_average(graetz, channel, m):
-    # Below the change of branch the value is not used: held there, so that the logarithm keeps its sense in an array.
+    # Below the change of branch the value is not used: held there, so that the logarithm keeps its sense in
+    # an array.
     held = np.maximum(graetz, channel.change) if m is np else graetz
     root = held ** (-1.0 / 3.0)
     return -0.25 * held * m.log1p(-(root * root * _polynomial(root, channel.coefficients)))

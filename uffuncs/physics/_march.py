@@ -1,7 +1,8 @@
 """One pass along a module: the balances of water and solute and the pressure loss as differential equations.
 
-An adaptive eighth-order Runge–Kutta method integrates them, whatever the number of points asked for. They are written for
-s = (x/L)^⅓, in which the laminar entrance, where the mass-transfer coefficient goes to infinity as x^(−⅓), is smooth.
+An adaptive eighth-order Runge–Kutta method integrates them, whatever the number of points asked for. They are
+written for s = (x/L)^⅓, in which the laminar entrance, where the mass-transfer coefficient goes to infinity
+as x^(−⅓), is smooth.
 """
 
 from __future__ import annotations
@@ -16,9 +17,10 @@ import numpy as np
 from ..errors import NoResult
 from .crossflow import reynolds as reynolds_number
 from .crossflow import schmidt as schmidt_number
+from .osmotic_flux import flux_osmotic
 
-#: Relative tolerance of a step, the absolute one on values that are 1 at the inlet, and the longest step in s: a long one may
-#: step over the kinks at the Reynolds numbers where the laws change.
+#: Relative tolerance of a step, the absolute one on values that are 1 at the inlet, and the longest step in
+#: s: a long one may step over the kinks at the Reynolds numbers where the laws change.
 TOLERANCE, SMALL, LONGEST = 1e-11, 1e-13, 0.125
 #: Share of the feed flow that counts as used up.
 USED_UP = 1e-6
@@ -71,19 +73,19 @@ class Operation:
 class March:
     """The differential equations of one module, in numbers that are 1 at the inlet.
 
-    State: flow, flow of solute, transmembrane pressure, and the 1/Gz passed, ∫D dx/(u d²), over its value at the end without
-    permeation.
+    State: flow, flow of solute, transmembrane pressure, and the 1/Gz passed, ∫D dx/(u d²), over its value at
+    the end without permeation.
     """
 
     def __init__(self, channels: Channels, operation: Operation):
-        from .osmotic_flux import flux_osmotic
-
-        self.channels, self.operation, self.flux_osmotic = channels, operation, flux_osmotic
+        self.channels, self.operation = channels, operation
         self.velocity = operation.feed_flow / channels.flow_area
         self.driving = operation.feed_pressure - operation.permeate_pressure
         self.schmidt = schmidt_number(operation.viscosity, operation.density, operation.diffusion_coefficient)
-        self.passed = operation.diffusion_coefficient * channels.length / (self.velocity * channels.diameter**2)
-        self.drain = channels.membrane_width * channels.length / operation.feed_flow  # 1/flux that takes the whole feed
+        self.passed = (operation.diffusion_coefficient * channels.length
+                       / (self.velocity * channels.diameter**2))
+        # 1 over the flux that takes the whole feed
+        self.drain = channels.membrane_width * channels.length / operation.feed_flow
 
     def flux(self, flow: float, solute: float, pressure: float, passed: float) -> tuple[float, float, float]:
         """Local flux, bulk concentration and exp(−J/k)."""
@@ -94,9 +96,11 @@ class March:
         k = sherwood * o.diffusion_coefficient / c.diameter
         bulk = o.feed_concentration * solute / flow
         if o.osmotic:
-            flux = self.flux_osmotic(self.driving * pressure, o.permeability, k, bulk, *o.coefficients, o.intrinsic_rejection)
+            flux = flux_osmotic(self.driving * pressure, o.permeability, k, bulk, *o.coefficients,
+                                o.intrinsic_rejection)
             if flux != flux:
-                raise NoResult("several fluxes, or none, satisfy the osmotic law at one place: its coefficients bend it too far")
+                raise NoResult("several fluxes, or none, satisfy the osmotic law at one place: its "
+                               "coefficients bend it too far")
         else:
             flux = o.permeability * self.driving * pressure
         return flux, bulk, math.exp(-flux / k)
@@ -112,8 +116,8 @@ class March:
         if bulk == 0.0:
             return 0.0
         if remaining < 1e-300:
-            raise NoResult("the surface concentration is beyond all numbers: no osmotic pressure limits the flux; "
-                           "give osmotic coefficients")
+            raise NoResult("the surface concentration is beyond all numbers: no osmotic pressure limits the "
+                           "flux; give osmotic coefficients")
         return bulk / remaining
 
     def rates(self, s: float, state: np.ndarray) -> tuple[float, float, float, float]:
@@ -137,11 +141,12 @@ class March:
         ]
         if self.operation.osmotic and self.operation.permeability > 0.0:
             endings.append((lambda s, y: self.net_driving(y),
-                            "the flux falls to 0, as the osmotic pressure of the bulk reaches the transmembrane pressure,"))
+                            "the flux falls to 0, as the osmotic pressure of the bulk reaches the "
+                            "transmembrane pressure,"))
         for event, _ in endings:
             event.terminal = True
-        found = solve_ivp(self.rates, (0.0, 1.0), [1.0, 1.0, 1.0, 0.0], method="DOP853", rtol=TOLERANCE, atol=SMALL,
-                          max_step=LONGEST, dense_output=True, events=[event for event, _ in endings])
+        found = solve_ivp(self.rates, (0.0, 1.0), [1.0, 1.0, 1.0, 0.0], method="DOP853", rtol=TOLERANCE,
+                          atol=SMALL, max_step=LONGEST, dense_output=True, events=[e for e, _ in endings])
         for (_, text), places in zip(endings, found.t_events or []):
             if len(places):
                 raise NoResult(f"{text} {self.channels.length * places[0]**3:.4g} m from the inlet, "
@@ -151,7 +156,7 @@ class March:
         return found
 
     def net_driving(self, state: np.ndarray) -> float:
-        """Transmembrane pressure less the osmotic pressure without polarization, over the pressure at the inlet."""
+        """Transmembrane pressure less the osmotic pressure without polarization, over that at the inlet."""
         flow, solute, pressure, _ = map(float, state)
         bulk = self.operation.feed_concentration * solute / max(flow, 1e-9)
         return pressure - self.operation.osmotic_difference(bulk) / self.driving
@@ -161,24 +166,27 @@ class March:
         rows = []
         for flow, solute, pressure, passed in states.T.tolist():
             flux, bulk, thinning = self.flux(flow, solute, pressure, passed)
-            rows.append((self.velocity * flow, self.operation.permeate_pressure + self.driving * pressure, bulk, flux,
-                         self.surface_concentration(bulk, thinning)))
+            rows.append((self.velocity * flow, self.operation.permeate_pressure + self.driving * pressure,
+                         bulk, flux, self.surface_concentration(bulk, thinning)))
         return np.array(rows).T
 
 
 def profile(channels: Channels, operation: Operation, points: float) -> tuple[np.ndarray, ...]:
-    """The columns of a module's profile: a row for each of the points, and a last one with the means along the length.
+    """The columns of a module's profile: a row for each of the points, and a last one with the means.
 
-    The flow of solute over the flow of water is the concentration at each point, and the mean flux is the loss of flow over
-    the membrane area: both balances close to rounding. The other means are Gauss quadratures over the solver's steps.
+    The flow of solute over the flow of water is the concentration at each point, and the mean flux is the
+    loss of flow over the membrane area: both balances close to rounding. The other means are Gauss
+    quadratures over the solver's steps.
     """
     o = operation
+    driving = o.feed_pressure - o.permeate_pressure
     if o.feed_flow <= 0.0:
         raise NoResult("the feed flow is 0")
-    if o.feed_pressure <= o.permeate_pressure:
+    if driving <= 0.0:
         raise NoResult("the feed pressure does not exceed the permeate pressure")
-    if o.osmotic and o.permeability > 0.0 and o.osmotic_difference(o.feed_concentration) >= o.feed_pressure - o.permeate_pressure:
-        raise NoResult("the osmotic pressure of the feed is not below the transmembrane pressure at the inlet: the flux is 0")
+    if o.osmotic and o.permeability > 0.0 and o.osmotic_difference(o.feed_concentration) >= driving:
+        raise NoResult("the osmotic pressure of the feed is not below the transmembrane pressure at the "
+                       "inlet: the flux is 0")
     march = March(channels, operation)
     found = march.solved()
     share = np.linspace(0.0, 1.0, int(points))

@@ -31,6 +31,19 @@ class OsmoticTable:
         #: whether c·π′ nowhere falls: then π(C_w) − π(C_p) rises with C_w for every rejection
         self.steepens = self._steepens()
 
+    @staticmethod
+    def of(concentration: np.ndarray, pressure: np.ndarray) -> OsmoticTable:
+        """The table of these points in any order, the origin added; the last ones are kept, as a spreadsheet asks cell by cell.
+
+        Raises
+        ------
+        NotAvailable
+            No point, or two at one concentration.
+        NoResult
+            An osmotic pressure at no concentration, or one that falls as the concentration rises.
+        """
+        return _prepared(np.asarray(concentration, float).tobytes(), np.asarray(pressure, float).tobytes())
+
     def _steepens(self) -> bool:
         # d(c π′)/dc = π′ + c π″ is a parabola in t on each piece: its ends and its vertex decide.
         left, (_, a, b, c) = self.knots[:-1], self.pieces.T
@@ -83,19 +96,6 @@ def _knot_slopes(x: np.ndarray, y: np.ndarray) -> np.ndarray:
 def _end_slope(near_width: float, far_width: float, near: float, far: float) -> float:
     """Three-point slope at an end, cut so that the curve stays monotone."""
     return max(((2.0 * near_width + far_width) * near - near_width * far) / (near_width + far_width), 0.0)
-
-
-def osmotic_table(concentration: np.ndarray, pressure: np.ndarray) -> OsmoticTable:
-    """The table of these points in any order, the origin added; the last ones are kept, as a spreadsheet asks cell by cell.
-
-    Raises
-    ------
-    NotAvailable
-        No point, or two at one concentration.
-    NoResult
-        An osmotic pressure at no concentration, or one that falls as the concentration rises.
-    """
-    return _prepared(np.asarray(concentration, float).tobytes(), np.asarray(pressure, float).tobytes())
 
 
 @lru_cache(maxsize=32)

@@ -1,4 +1,4 @@
-"""Crossflow: channels, their velocities, Reynolds and Schmidt numbers, shear rates, and the geometry of fibers."""
+"""Crossflow: channels and fibers, their velocities, Reynolds and Schmidt numbers, and shear rates."""
 
 from __future__ import annotations
 
@@ -10,9 +10,10 @@ import numpy as np
 from ..declaration import Number, Rule, worksheet_function
 
 BIRD = "Bird, Stewart & Lightfoot, Transport Phenomena, 2nd ed., Wiley (2002)"
-SCHOCK_MIQUEL = "Schock & Miquel, Mass transfer and pressure loss in spiral wound modules, Desalination 64 (1987) 339"
-METZNER_REED = ("Metzner & Reed, Flow of non-Newtonian fluids: correlation of the laminar, transition, and turbulent-flow "
-                "regions, AIChE J. 1 (1955) 434")
+SCHOCK_MIQUEL = ("Schock & Miquel, Mass transfer and pressure loss in spiral wound modules, "
+                 "Desalination 64 (1987) 339")
+METZNER_REED = ("Metzner & Reed, Flow of non-Newtonian fluids: correlation of the laminar, transition, and "
+                "turbulent-flow regions, AIChE J. 1 (1955) 434")
 GEOMETRY = "geometry, no source"
 
 EFFECTIVE_VELOCITY = "Velocity between the filaments, Q/(w h ε)"
@@ -25,10 +26,11 @@ _SPAN = math.log(TURBULENT_ABOVE / LAMINAR_BELOW)
 
 
 def blended(reynolds: Number, laminar: Callable, turbulent: Callable) -> Number:
-    """A law of laminar flow up to Re 2100, of turbulent flow from Re 4000, and between them the straight line in logarithms.
+    """A law of laminar flow up to Re 2100, of turbulent flow from Re 4000, and a line in logarithms between.
 
-    Both are functions of the Reynolds number at one geometry and one liquid. The line joins their values at 2100 and 4000, so
-    that the whole is continuous; it is this library's own, for want of a law of the transition.
+    Both are functions of the Reynolds number at one geometry and one liquid. The line joins their values at
+    2100 and 4000, so that the whole is continuous; it is this library's own, for want of a law of the
+    transition.
     """
     if isinstance(reynolds, np.ndarray):
         held = np.minimum(np.maximum(reynolds, LAMINAR_BELOW), TURBULENT_ABOVE)
@@ -53,12 +55,15 @@ def hydraulic_diameter_slit(channel_height: Number, channel_width: Number) -> Nu
     return 2.0 * channel_height * channel_width / (channel_height + channel_width)
 
 
-@worksheet_function(result="hydraulic_diameter", equation="d_h = 4 ε/(2/h + (1 − ε)·4/d_f)", source=SCHOCK_MIQUEL)
-def hydraulic_diameter_spacer(channel_height: Number, spacer_voidage: Number, filament_diameter: Number) -> Number:
+@worksheet_function(result="hydraulic_diameter", equation="d_h = 4 ε/(2/h + (1 − ε)·4/d_f)",
+                    source=SCHOCK_MIQUEL)
+def hydraulic_diameter_spacer(
+    channel_height: Number, spacer_voidage: Number, filament_diameter: Number
+) -> Number:
     """Hydraulic diameter of a channel with a spacer: four times the void volume over the wetted surface.
 
-    The wetted surface is both walls and that of the filaments, whose specific surface is 4/d_f for round ones. A voidage of 1 is
-    the open slit, 2h.
+    The wetted surface is both walls and that of the filaments, whose specific surface is 4/d_f for round
+    ones. A voidage of 1 is the open slit, 2h.
     """
     return 4.0 * spacer_voidage / (2.0 / channel_height + (1.0 - spacer_voidage) * 4.0 / filament_diameter)
 
@@ -69,11 +74,13 @@ def hydraulic_diameter_spacer(channel_height: Number, spacer_voidage: Number, fi
     source=GEOMETRY,
     arguments={"area": "Membrane area on both walls of the channels"},
 )
-def flow_area_spacer(area: Number, channel_length: Number, channel_height: Number, spacer_voidage: Number) -> Number:
+def flow_area_spacer(
+    area: Number, channel_length: Number, channel_height: Number, spacer_voidage: Number
+) -> Number:
     """Open cross-section of spacer-filled channels from their membrane area.
 
-    Both walls of a channel are membrane, so the width of all channels is A/(2L). `velocity` with this area is the effective one,
-    between the filaments.
+    Both walls of a channel are membrane, so the width of all channels is A/(2L). `velocity` with this area is
+    the effective one, between the filaments.
     """
     return area * channel_height * spacer_voidage / (2.0 * channel_length)
 
@@ -102,7 +109,8 @@ def reynolds(velocity: Number, hydraulic_diameter: Number, density: Number, visc
     result="reynolds",
     equation="Re = ρ u^(2−n) d^n/(8^(n−1) K ((3n+1)/(4n))^n), shear stress K γ^n",
     source=METZNER_REED,
-    cautions=[Rule(lambda result: result > LAMINAR_BELOW, "the flow is not laminar: laws of Newtonian turbulent flow do not hold")],
+    cautions=[Rule(lambda result: result > LAMINAR_BELOW,
+                   "the flow is not laminar: laws of Newtonian turbulent flow do not hold")],
     dimensional="the unit of the consistency depends on the flow index",
 )
 def reynolds_power_law(
@@ -110,9 +118,10 @@ def reynolds_power_law(
 ) -> Number:
     """Generalised Reynolds number of a power-law liquid in a round tube.
 
-    Defined so that laminar flow has the friction factor 64/Re (Darcy) whatever the flow index; a flow index of 1 gives the ordinary
-    Reynolds number with the consistency as viscosity. The consistency is that of the shear stress K γ^n, not the K′ of tube
-    viscometers, which includes ((3n+1)/(4n))^n. For a slit it is an approximation.
+    Defined so that laminar flow has the friction factor 64/Re (Darcy) whatever the flow index; a flow index
+    of 1 gives the ordinary Reynolds number with the consistency as viscosity. The consistency is that of the
+    shear stress K γ^n, not the K′ of tube viscometers, which includes ((3n+1)/(4n))^n. For a slit it is an
+    approximation.
     """
     n = flow_index
     shape = ((3.0 * n + 1.0) / (4.0 * n)) ** n * 8.0 ** (n - 1.0)
@@ -139,11 +148,13 @@ def shear_rate_tube(velocity: Number, tube_diameter: Number) -> Number:
     return 8.0 * velocity / tube_diameter
 
 
-@worksheet_function(result="shear_rate", equation="γ = 6 u/h", source=f"laminar flow between parallel plates; {BIRD}")
+@worksheet_function(result="shear_rate", equation="γ = 6 u/h",
+                    source=f"laminar flow between parallel plates; {BIRD}")
 def shear_rate_slit(velocity: Number, channel_height: Number) -> Number:
     """Shear rate at the walls of a slit.
 
-    Laminar flow (Reynolds number on 2h below 2100) of a Newtonian liquid, channel much wider than high, no spacer.
+    Laminar flow (Reynolds number on 2h below 2100) of a Newtonian liquid, channel much wider than high, no
+    spacer.
     """
     return 6.0 * velocity / channel_height
 
@@ -157,7 +168,8 @@ def shear_rate_slit(velocity: Number, channel_height: Number) -> Number:
 def area_fiber(fiber_count: Number, fiber_diameter: Number, fiber_length: Number) -> Number:
     """Membrane area of a bundle of fibers.
 
-    Give the inner diameter for inside-out filtration, the outer for outside-in, and the length between the pottings.
+    Give the inner diameter for inside-out filtration, the outer for outside-in, and the length between the
+    pottings.
     """
     return fiber_count * math.pi * fiber_diameter * fiber_length
 

@@ -7,8 +7,8 @@ import math
 import numpy as np
 
 from ..declaration import Fitted, Number, Rule, worksheet_function
-from .crossflow import (BIRD, CHANNEL_VISCOSITY, EFFECTIVE_VELOCITY, LAMINAR_BELOW, SCHOCK_MIQUEL, TURBULENT_ABOVE, blended,
-                        hydraulic_diameter_spacer)
+from .crossflow import (BIRD, CHANNEL_VISCOSITY, EFFECTIVE_VELOCITY, LAMINAR_BELOW, SCHOCK_MIQUEL,
+                        TURBULENT_ABOVE, blended, hydraulic_diameter_spacer)
 from .crossflow import reynolds as reynolds_number
 from .crossflow_transfer import SPACER_REYNOLDS, spacer_reynolds
 
@@ -33,13 +33,14 @@ def _of_slit(test):
 def _branches(of) -> dict:
     """Fitted range, caution and remarks of the three branches."""
     return dict(
-        fitted=[Fitted("turbulent branch, Blasius: Reynolds number", *BLASIUS_REYNOLDS, value=of(lambda re: re),
-                       when=of(lambda re: re >= TURBULENT_ABOVE))],
+        fitted=[Fitted("turbulent branch, Blasius: Reynolds number", *BLASIUS_REYNOLDS,
+                       value=of(lambda re: re), when=of(lambda re: re >= TURBULENT_ABOVE))],
         cautions=[Rule(of(lambda re: LAMINAR_BELOW < re < TURBULENT_ABOVE),
-                       "transition, Reynolds number between 2100 and 4000: interpolated between the laminar and the turbulent "
-                       "branch")],
+                       "transition, Reynolds number between 2100 and 4000: interpolated between the laminar "
+                       "and the turbulent branch")],
         remarks=[Rule(of(lambda re: re <= LAMINAR_BELOW), "laminar branch, Reynolds number below 2100"),
-                 Rule(of(lambda re: re >= TURBULENT_ABOVE), "turbulent branch, Reynolds number above 4000: Blasius")],
+                 Rule(of(lambda re: re >= TURBULENT_ABOVE),
+                      "turbulent branch, Reynolds number above 4000: Blasius")],
     )
 
 
@@ -54,7 +55,8 @@ def _pressure_drop(velocity, diameter, length, viscosity, density, laminar_facto
 
 @worksheet_function(
     result="pressure_drop",
-    equation="Δp = 32 µ u L/d² (Re < 2100); 0.316 Re^-0.25 (L/d) ρ u²/2 (Re > 4000); between linear in ln Re, ln Δp",
+    equation="Δp = 32 µ u L/d² (Re < 2100); 0.316 Re^-0.25 (L/d) ρ u²/2 (Re > 4000); between linear in "
+             "ln Re, ln Δp",
     source=f"Hagen–Poiseuille, {BIRD}; {BLASIUS}; the transition is this library's own",
     arguments={"viscosity": CHANNEL_VISCOSITY},
     **_branches(_of_tube),
@@ -64,16 +66,16 @@ def pressure_drop_tube(
 ) -> Number:
     """Pressure loss along a smooth tube or an open fiber's lumen, laminar or turbulent.
 
-    Fully developed flow at one velocity: entrance, exit, fittings and the loss of flow through the membrane are left out
-    (module_profile_tube takes the last into account).
+    Fully developed flow at one velocity: entrance, exit, fittings and the loss of flow through the membrane
+    are left out (module_profile_tube takes the last into account).
     """
     return _pressure_drop(velocity, tube_diameter, channel_length, viscosity, density, 64.0)
 
 
 @worksheet_function(
     result="pressure_drop",
-    equation="Δp = 12 µ u L/h² (Re < 2100); 0.316 Re^-0.25 (L/2h) ρ u²/2 (Re > 4000), Re on 2h; between linear in "
-             "ln Re, ln Δp",
+    equation="Δp = 12 µ u L/h² (Re < 2100); 0.316 Re^-0.25 (L/2h) ρ u²/2 (Re > 4000), Re on 2h; between "
+             "linear in ln Re, ln Δp",
     source=f"plane Poiseuille flow, {BIRD}; {BLASIUS}; the transition is this library's own",
     arguments={"viscosity": CHANNEL_VISCOSITY},
     **_branches(_of_slit),
@@ -83,8 +85,8 @@ def pressure_drop_slit(
 ) -> Number:
     """Pressure loss along an open slit, laminar or turbulent.
 
-    Channel much wider than high, on the hydraulic diameter 2h; fully developed flow at one velocity, entrance and exit left
-    out.
+    Channel much wider than high, on the hydraulic diameter 2h; fully developed flow at one velocity, entrance
+    and exit left out.
     """
     return _pressure_drop(velocity, 2.0 * channel_height, channel_length, viscosity, density, 96.0)
 
@@ -107,8 +109,9 @@ def pressure_drop_spacer(
 ) -> Number:
     """Pressure loss along a channel with a spacer.
 
-    On the hydraulic diameter of hydraulic_diameter_spacer and the velocity between the filaments. The friction factor is
-    Darcy's, four times Fanning's. Entrance, exit and the glue lines of an element are left out.
+    On the hydraulic diameter of hydraulic_diameter_spacer and the velocity between the filaments. The
+    friction factor is Darcy's, four times Fanning's. Entrance, exit and the glue lines of an element are left
+    out.
     """
     diameter = hydraulic_diameter_spacer(channel_height, spacer_voidage, filament_diameter)
     unit = viscosity**2 * channel_length / (2.0 * density * diameter**3)
@@ -118,11 +121,11 @@ def pressure_drop_spacer(
 @worksheet_function(
     result="pressure_drop",
     equation="Δp = (J/L_p) βL tanh(βL/2), β² = 128 µ L_p/d³",
-    source="Hagen–Poiseuille with a permeable wall, derived here; compare Doshi, Gill & Kabadi, AIChE J. 23 (1977) 765, and "
-           "Carroll & Booker, J. Membr. Sci. 168 (2000) 203",
+    source="Hagen–Poiseuille with a permeable wall, derived here; compare Doshi, Gill & Kabadi, AIChE J. 23 "
+           "(1977) 765, and Carroll & Booker, J. Membr. Sci. 168 (2000) 203",
     arguments={"flux": "Mean flux along the fiber, on the area of the lumen",
                "fiber_diameter": "Inner diameter of the fiber",
-               "fiber_length": "Length from the open to the closed end; half the fiber where both ends are open",
+               "fiber_length": "Length from the open to the closed end; half the fiber if both are open",
                "viscosity": "Dynamic viscosity of the liquid in the lumen",
                "permeability": "Permeability, on the area of the lumen"},
 )
@@ -131,9 +134,10 @@ def pressure_drop_fiber(
 ) -> Number:
     """Pressure loss along the lumen of a fiber that is closed at one end.
 
-    Between the open and the closed end, whichever way the water flows: inside-out with the feed dead-end in the lumen, or
-    outside-in with the permeate drawn off at the open end. Laminar flow of one viscosity, one permeability along the fiber,
-    no osmotic pressure. For a permeability near 0 the flux is even and the loss is 64 µ J L²/d³.
+    Between the open and the closed end, whichever way the water flows: inside-out with the feed dead-end in
+    the lumen, or outside-in with the permeate drawn off at the open end. Laminar flow of one viscosity, one
+    permeability along the fiber, no osmotic pressure. For a permeability near 0 the flux is even and the loss
+    is 64 µ J L²/d³.
     """
     stiffness = 128.0 * viscosity * fiber_length**2 / fiber_diameter**3
     return flux * stiffness * _tanh_half_over((stiffness * permeability) ** 0.5)

@@ -13,6 +13,9 @@ TOPIC = "plant"
 M53 = "AWWA Manual M53, Microfiltration and Ultrafiltration Membranes for Drinking Water, 2nd ed. (2016)"
 BALANCE = f"water balance of the cycle; {M53}"
 
+#: A share of a day this small is rounding: nothing is left.
+ROUNDING = 1e-12
+
 NET_FLUX = replace(quantity("net_flux"), low=-1e5)
 NET_RECOVERY = replace(quantity("recovery"), low=-1e9, meaning="Net permeate over feed")
 GROSS = "Flux while filtering, before backwash and downtime"
@@ -20,7 +23,7 @@ NEGATIVE = Rule(lambda result: result < 0,
                 "it is negative: backwash and cleaning use more water than is filtered")
 NOTHING_FED = Rule(lambda flux: flux == 0, "{flux}: nothing is fed")
 NO_TIME_LEFT = Rule(lambda cleanings_per_day, cleaning_time, test_time_per_day:
-                    _in_service(cleanings_per_day, cleaning_time, test_time_per_day) <= 0,
+                    _in_service(cleanings_per_day, cleaning_time, test_time_per_day) <= ROUNDING,
                     "{cleanings_per_day} of {cleaning_time} and {test_time_per_day} leave no time to filter")
 
 
@@ -100,7 +103,7 @@ def flux_net_daily(
     use permeate. Without washes and tests it is flux_net.
     """
     cycle = flux_net(flux, filtration_time, backwash_flux, backwash_time, idle_time)
-    share = above_zero(_in_service(cleanings_per_day, cleaning_time, test_time_per_day))
+    share = above_zero(_in_service(cleanings_per_day, cleaning_time, test_time_per_day), ROUNDING)
     return share * cycle - cleanings_per_day * cleaning_volume_per_area
 
 
@@ -129,7 +132,7 @@ def recovery_daily(
     Dead-end: the feed is what is filtered. Backwash and washes use permeate. Idle and test time count only in
     that they leave fewer cycles to carry the water of the washes.
     """
-    share = above_zero(_in_service(cleanings_per_day, cleaning_time, test_time_per_day))
+    share = above_zero(_in_service(cleanings_per_day, cleaning_time, test_time_per_day), ROUNDING)
     gross = share * flux * filtration_time / (filtration_time + backwash_time + idle_time)
     net = flux_net_daily(flux, filtration_time, backwash_flux, backwash_time, idle_time, cleanings_per_day,
                          cleaning_time, cleaning_volume_per_area, test_time_per_day)

@@ -2,19 +2,17 @@
 
 from __future__ import annotations
 
-import math
 from dataclasses import replace
 
 import numpy as np
 
 from ..declaration import Column, Number, Rule, worksheet_function
-from ..errors import UffuncsError
 from ..quantities import quantity
 from ._flux_laws import (
-    polynomial_one, polynomial_rows, polynomial_solutions, power_one, power_rows, table_one, table_rows, table_solutions,
+    polynomial_one, polynomial_rows, power_one, power_rows, several_by_polynomial, several_by_table, table_one, table_rows,
     without_osmosis,
 )
-from ._osmotic_table import osmotic_table
+from ._osmotic_table import OsmoticTable
 from .polarization import FILM, polarization_modulus
 
 TOPIC = "polarization"
@@ -54,7 +52,8 @@ def _no_transfer(permeability, mass_transfer_coefficient, bulk_concentration, in
 
 
 NO_TRANSFER = Rule(_no_transfer, "the mass-transfer coefficient is 0: the surface concentration has no limit")
-NO_FLUX = Rule(lambda result, permeability: result == 0 and permeability > 0,
+NO_FLUX = Rule(lambda result, permeability, bulk_concentration, intrinsic_rejection, reflection_coefficient:
+               result == 0 and not without_osmosis(bulk_concentration, permeability, intrinsic_rejection, reflection_coefficient),
                "the flux is 0: {transmembrane_pressure} does not exceed the osmotic pressure difference at no flux; "
                "water would flow back")
 
@@ -86,18 +85,228 @@ FALLING = Rule(
     "the osmotic polynomial falls somewhere between 0 and the surface concentration: outside of any sensible fit")
 
 
-def _count(
-    transmembrane_pressure, permeability, mass_transfer_coefficient, bulk_concentration, first_coefficient,
-    second_coefficient, third_coefficient, intrinsic_rejection, reflection_coefficient,
-):
-    return polynomial_solutions(
-        transmembrane_pressure, permeability, mass_transfer_coefficient, bulk_concentration, first_coefficient,
-        second_coefficient, third_coefficient, intrinsic_rejection, reflection_coefficient)
+POLYNOMIAL_REFUSES = [
+    NO_TRANSFER,
+    Rule(several_by_polynomial, "several fluxes up to that of pure water solve the equation, because the osmotic polynomial "
+                                "falls somewhere; fit it with coefficients of 0 or above"),
+    Rule(lambda first_coefficient, second_coefficient, third_coefficient:
+         min(first_coefficient, second_coefficient, third_coefficient) < 0,
+         "no flux up to that of pure water solves the equation, because the osmotic polynomial is negative at the surface"),
+]
+POLYNOMIAL_CAUTIONS = [FALLING, DENSE_SURFACE]
 
 
-def _several(
-    transmembrane_pressure, permeability, mass_transfer_coefficient, bulk_concentration, first_coefficient,
-    second_coefficient, third_coefficient, intrinsic_rejection, reflection_coefficient,
-):
-    return _count(transmembrane_pressure, permeability, mass_transfer_coefficient, bulk_concentration, first_coefficient,
-                  second_coefficient, third_coefficient, intrinsic_rejection, reflection_coefficient) > 1
+@worksheet_function(
+    result="flux",
+    equation=EQUATION + "π = b_1 c + b_2 c² + b_3 c³",
+    source=SOURCE,
+    refuses=POLYNOMIAL_REFUSES,
+    cautions=[NO_FLUX, *POLYNOMIAL_CAUTIONS],
+    dimensional=ITERATIVE,
+)
+def flux_osmotic(
+    transmembrane_pressure: Number,
+    permeability: Number,
+    mass_transfer_coefficient: Number,
+    bulk_concentration: Number,
+    first_coefficient: Number,
+    second_coefficient: Number = 0.0,
+    third_coefficient: Number = 0.0,
+    intrinsic_rejection: Number = 1.0,
+    reflection_coefficient: Number = 1.0,
+) -> Number:
+    """Flux limited by the osmotic pressure at the membrane surface, from an osmotic polynomial.
+
+    Local and steady: one mass-transfer coefficient and one bulk concentration, constant properties in the film, no gel and no
+    fouling beyond what the permeability holds. The permeability is that at process temperature. The coefficients belong to a
+    fit at that temperature, pH and ionic strength, and hold in its range alone: compare the surface concentration
+    (UF_FLUX_CURVE, UF_SURFACE_CONCENTRATION) with the highest concentration of the fit, usually 200 to 500 g/L for proteins.
+    Where the pressure does not exceed the osmotic pressure difference at no flux, the flux is 0. With coefficients below 0
+    several fluxes may solve the equation: then there is no result. J is exact to rounding.
+    """
+    values = (transmembrane_pressure, permeability, mass_transfer_coefficient, bulk_concentration, first_coefficient,
+              second_coefficient, third_coefficient, intrinsic_rejection, reflection_coefficient)
+    return polynomial_one(*values) if _floats(values) else _rows(polynomial_rows, *values)
+
+
+@worksheet_function(
+    result="flux",
+    equation=EQUATION + "π = b cⁿ",
+    source=SOURCE,
+    refuses=[NO_TRANSFER],
+    cautions=[NO_FLUX, DENSE_SURFACE],
+    dimensional=ITERATIVE,
+)
+def flux_osmotic_power(
+    transmembrane_pressure: Number,
+    permeability: Number,
+    mass_transfer_coefficient: Number,
+    bulk_concentration: Number,
+    power_coefficient: Number,
+    exponent: Number,
+    intrinsic_rejection: Number = 1.0,
+    reflection_coefficient: Number = 1.0,
+) -> Number:
+    """Flux limited by the osmotic pressure at the membrane surface, from an osmotic power law.
+
+    As flux_osmotic. A power law fits macromolecules at high concentrations (an exponent of 2 and above) and is too low where
+    the solution is dilute, where π is proportional to c.
+    """
+    values = (transmembrane_pressure, permeability, mass_transfer_coefficient, bulk_concentration, power_coefficient, exponent,
+              intrinsic_rejection, reflection_coefficient)
+    return power_one(*values) if _floats(values) else _rows(power_rows, *values)
+
+
+@worksheet_function(
+    result="flux",
+    equation=EQUATION + "π by monotone interpolation",
+    source=f"{SOURCE}; interpolation: Fritsch & Butland, A method for constructing local monotone piecewise cubic "
+           "interpolants, SIAM J. Sci. Stat. Comput. 5 (1984) 300",
+    arguments={"concentration": "Concentrations of the measured osmotic pressures",
+               "osmotic_pressure": "Osmotic pressures measured at these concentrations"},
+    refuses=[
+        NO_TRANSFER,
+        Rule(lambda bulk_concentration, concentration: bulk_concentration > max(concentration),
+             "{bulk_concentration} is above the highest concentration of the osmotic table"),
+        Rule(several_by_table, "several fluxes up to that of pure water solve the equation with this table and rejection"),
+        Rule(lambda concentration: True,
+             "the surface concentration would exceed the osmotic table's highest; measure further or lower the pressure"),
+    ],
+    cautions=[NO_FLUX],
+    dimensional=ITERATIVE,
+)
+def flux_osmotic_table(
+    transmembrane_pressure: Number,
+    permeability: Number,
+    mass_transfer_coefficient: Number,
+    bulk_concentration: Number,
+    concentration: Column,
+    osmotic_pressure: Column,
+    intrinsic_rejection: Number = 1.0,
+    reflection_coefficient: Number = 1.0,
+) -> Number:
+    """Flux limited by the osmotic pressure at the membrane surface, from measured osmotic pressures.
+
+    As flux_osmotic. Monotone cubic interpolation through the points and the origin; the rows may be in any order, but no
+    concentration twice and no osmotic pressure that falls. No extrapolation: where the surface would be more concentrated
+    than the table there is no result.
+    """
+    table = OsmoticTable.of(concentration, osmotic_pressure)
+    values = (transmembrane_pressure, permeability, mass_transfer_coefficient, bulk_concentration, intrinsic_rejection,
+              reflection_coefficient)
+    if _floats(values):
+        return table_one(*values[:4], table, *values[4:])
+    return _rows(lambda *rows: table_rows(*rows[:4], table, *rows[4:]), *values)
+
+
+def _osmotic_difference(surface, first, second, third, rejection):
+    """π(C_w) − π(C_p), in a form that keeps its digits where the rejection is small."""
+    passed = 1.0 - rejection
+    return rejection * surface * (first + surface * (second * (1.0 + passed)
+                                                     + surface * (third * (1.0 + passed + passed * passed))))
+
+
+@worksheet_function(
+    result=replace(quantity("transmembrane_pressure"), low=-1e4, high=1e300),
+    equation="Δp_tm = J/L_p + σ [π(C_w) − π(C_p)], C_w = C_b/(R e^(−J/k) + 1 − R), C_p = (1 − R) C_w, "
+             "π = b_1 c + b_2 c² + b_3 c³",
+    source=SOURCE,
+    refuses=[
+        Rule(lambda permeability: permeability == 0, "the permeability is 0: no pressure gives a flux"),
+        NO_TRANSFER,
+        Rule(lambda flux, mass_transfer_coefficient: flux > 100 * mass_transfer_coefficient,
+             "{flux} is so far above {mass_transfer_coefficient} that the osmotic pressure is too large a number"),
+    ],
+    cautions=[
+        Rule(lambda flux, mass_transfer_coefficient, bulk_concentration, first_coefficient, second_coefficient,
+             third_coefficient, intrinsic_rejection:
+             _falls(_surface(flux, mass_transfer_coefficient, bulk_concentration, intrinsic_rejection),
+                    first_coefficient, second_coefficient, third_coefficient), FALLING.text),
+        Rule(lambda flux, mass_transfer_coefficient, bulk_concentration, intrinsic_rejection:
+             _surface(flux, mass_transfer_coefficient, bulk_concentration, intrinsic_rejection) > DENSE, DENSE_SURFACE.text),
+    ],
+)
+def pressure_for_flux(
+    flux: Number,
+    permeability: Number,
+    mass_transfer_coefficient: Number,
+    bulk_concentration: Number,
+    first_coefficient: Number,
+    second_coefficient: Number = 0.0,
+    third_coefficient: Number = 0.0,
+    intrinsic_rejection: Number = 1.0,
+    reflection_coefficient: Number = 1.0,
+) -> Number:
+    """Transmembrane pressure that a flux takes against the osmotic pressure; the inverse of flux_osmotic.
+
+    Explicit, and with the assumptions of flux_osmotic. At no flux it is the osmotic pressure difference of the bulk. The
+    pressure rises steeply with the flux: above the limit that gel or solubility set, no pressure gives the flux.
+    """
+    surface = bulk_concentration * polarization_modulus(flux, mass_transfer_coefficient, intrinsic_rejection)
+    osmotic = _osmotic_difference(surface, first_coefficient, second_coefficient, third_coefficient, intrinsic_rejection)
+    none = without_osmosis(bulk_concentration, 1.0, intrinsic_rejection, reflection_coefficient)
+    if type(osmotic) is float:
+        return flux / permeability + (0.0 if none else reflection_coefficient * osmotic)
+    return flux / permeability + np.where(none, 0.0 * first_coefficient * bulk_concentration, reflection_coefficient * osmotic)
+
+
+def _without_flux(
+    transmembrane_pressure, permeability, mass_transfer_coefficient, bulk_concentration, first_coefficient, second_coefficient,
+    third_coefficient, intrinsic_rejection, reflection_coefficient,
+) -> bool:
+    return permeability > 0 and 0.0 in flux_osmotic(
+        transmembrane_pressure[transmembrane_pressure > 0], permeability, mass_transfer_coefficient, bulk_concentration,
+        first_coefficient, second_coefficient, third_coefficient, intrinsic_rejection, reflection_coefficient)
+
+
+def _beyond_fit(
+    transmembrane_pressure, permeability, mass_transfer_coefficient, bulk_concentration, first_coefficient, second_coefficient,
+    third_coefficient, intrinsic_rejection, reflection_coefficient,
+) -> bool:
+    osmotic = first_coefficient, second_coefficient, third_coefficient
+    flux = flux_osmotic(float(max(transmembrane_pressure)), permeability, mass_transfer_coefficient, bulk_concentration, *osmotic,
+                        intrinsic_rejection, reflection_coefficient)
+    surface = _surface(flux, mass_transfer_coefficient, bulk_concentration, intrinsic_rejection)
+    return surface > DENSE or _falls(surface, *osmotic)
+
+
+@worksheet_function(
+    results=[
+        "transmembrane_pressure",
+        "flux",
+        replace(quantity("surface_concentration"), high=1e300),
+        "polarization_modulus",
+        replace(quantity("osmotic_pressure"), low=-1e300, high=1e300),
+    ],
+    equation="for each Δp_tm: J as flux_osmotic, C_w, C_w/C_b, π(C_w) − π(C_p)",
+    source=SOURCE,
+    cautions=[Rule(_without_flux, "the flux is 0 at the lowest pressure: it does not exceed the osmotic pressure difference at "
+                                  "no flux; water would flow back"),
+              Rule(_beyond_fit, "at the highest flux the surface concentration is outside of any sensible fit: the osmotic "
+                                "polynomial falls below it, or it is above 1000 g/L")],
+    dimensional=ITERATIVE,
+)
+def flux_curve(
+    transmembrane_pressure: Column,
+    permeability: Number,
+    mass_transfer_coefficient: Number,
+    bulk_concentration: Number,
+    first_coefficient: Number,
+    second_coefficient: Number = 0.0,
+    third_coefficient: Number = 0.0,
+    intrinsic_rejection: Number = 1.0,
+    reflection_coefficient: Number = 1.0,
+) -> tuple:
+    """Flux against pressure with the osmotic pressure at the membrane surface, one row a pressure.
+
+    Columns: pressure, flux, surface concentration, polarization modulus, and the osmotic pressure difference between surface
+    and permeate. As flux_osmotic: the curve is straight at low pressure and bends where the osmotic pressure takes most of
+    what is added. Ask UF_WHY of UF_FLUX_OSMOTIC about a single pressure.
+    """
+    osmotic = (first_coefficient, second_coefficient, third_coefficient)
+    flux = flux_osmotic(transmembrane_pressure, permeability, mass_transfer_coefficient, bulk_concentration, *osmotic,
+                        intrinsic_rejection, reflection_coefficient)
+    with np.errstate(all="ignore"):
+        modulus = polarization_modulus(flux, mass_transfer_coefficient, intrinsic_rejection)
+        surface = bulk_concentration * modulus if bulk_concentration > 0 else np.zeros_like(flux)
+        return transmembrane_pressure, flux, surface, modulus, _osmotic_difference(surface, *osmotic, intrinsic_rejection)

@@ -75,8 +75,8 @@ GEL_CASCADE_REFUSALS = [
 NO_SPLIT = [
     Rule(lambda split: split != "least area", "{final_concentration} is out of reach with this split"),
     Rule(lambda split: split == "least area",
-         "there is no least area: it falls on towards a stage that passes all it is fed, and the solute; "
-         "take more stages, or the split equal area"),
+         "there is no least area: it falls on towards a stage that passes all it is fed, the solute included; "
+         "take more stages"),
 ]
 
 STAGES_ARGUMENTS = (
