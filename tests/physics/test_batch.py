@@ -1,4 +1,4 @@
-"""Batches by the gel model and on measured fluxes: the integrals against quadrature, closed forms, kinks, conservation."""
+"""Batches by the gel model and on measured fluxes: quadrature, closed forms, kinks, seams."""
 
 import math
 
@@ -9,11 +9,8 @@ from hypothesis import strategies as st
 from scipy.integrate import quad, solve_ivp
 from scipy.special import expi
 
-from uffuncs.cell import call
 from uffuncs.errors import NotAvailable, NoResult
 from uffuncs.physics import batch as b
-from uffuncs.physics import campaign as campaign_module
-from uffuncs.physics import diafiltration as d
 from uffuncs.physics._flux_law import drained, passed
 
 LMH, HOUR = 1e-3 / 3600, 3600.0
@@ -24,7 +21,7 @@ nearness = st.floats(1e-9, 3)  # ln(C_g/C) at the end
 
 
 def by_quadrature(feed, factor, transfer, gel, rejection, maximum=math.inf):
-    """∫ e^(−u)/J du in the variable ln y, y = ln(C_g/C), in which the end near the gel concentration is smooth."""
+    """∫ e^(−u)/J du in the variable ln y, y = ln(C_g/C), which smooths the end near the gel concentration."""
     length, start = math.log(factor), math.log(gel / feed)
     if rejection < 1e-3:
         kinks = [u for u in [(start - maximum / transfer) / rejection if rejection else -1] if 0 < u < length]
@@ -279,42 +276,3 @@ def test_the_elementary_integral_has_no_seam():
         for end in (1 / 3, 3.0):
             below, above = drained(1.0, end * (1 - 1e-13), length), drained(1.0, end * (1 + 1e-13), length)
             assert below == pytest.approx(above, rel=5e-13)
-
-
-# --- the campaign ---------------------------------------------------------------------------------------
-
-LAW = (20 * LMH, 300.0)
-
-
-@pytest.mark.parametrize(
-    "rejection, sieving, maximum", [(1.0, 1.0, None), (0.98, 0.9, None), (0.99, 0.5, 40 * LMH)]
-)
-def test_a_campaign_adds_up_to_its_steps(rejection, sieving, maximum):
-    time, volume, product, impurity, kept, flux = campaign_module.campaign(
-        10.0, 10.0, 5.0, 6.0, 3.0, 50.0, *LAW, rejection, sieving, maximum
-    )
-    washed = product[0] * math.exp(-(1 - rejection) * 6.0)
-    assert time[0] == b.batch_time(10.0, 10.0, 5.0, 50.0, *LAW, rejection, maximum)
-    assert time[1] == d.diafiltration_time(2.0, product[0], 6.0, 50.0, *LAW, 1 - rejection, maximum)
-    assert time[2] == pytest.approx(b.batch_time(2.0, washed, 3.0, 50.0, *LAW, rejection, maximum), rel=1e-14)
-    assert time[3] == pytest.approx(time[:3].sum(), rel=1e-15)
-    assert list(volume) == pytest.approx([2.0, 2.0, 2 / 3, 2 / 3])
-    assert kept[3] == pytest.approx(np.prod(kept[:3])) == pytest.approx(product[3] * volume[3] / 100.0)
-    assert impurity[3] == pytest.approx(15.0 ** (1 - sieving) * math.exp(-6.0 * sieving))
-    permeate = [8.0, 12.0, 4 / 3]
-    assert (flux[:3] * time[:3] * 50.0) == pytest.approx(permeate)
-    assert flux[3] * time[3] * 50.0 == pytest.approx(sum(permeate))
-
-
-def test_steps_left_out():
-    time, _, _, impurity, kept, flux = campaign_module.campaign(10.0, 10.0, 1.0, 0.0, 1.0, 50.0, *LAW)
-    assert list(time) == [0, 0, 0, 0] and list(impurity) == [1, 1, 1, 1] and list(kept) == [1, 1, 1, 1]
-    assert list(flux) == pytest.approx([20 * LMH * math.log(30)] * 4)
-
-
-def test_a_campaign_that_reaches_the_gel(why):
-    for cells in ((10, 10, 30, 0, 1), (10, 10, 5, 6, 6)):
-        assert "the product reaches gel_concentration 300 g/L" in why("UF_CAMPAIGN", *cells, 50, 20, 300)
-    # Washed out enough in between, the second concentration stays below.
-    assert why("UF_CAMPAIGN", 10, 10, 5, 6, 6, 50, 20, 300, 0.9) == "ok"
-    assert call("UF_CAMPAIGN", [10, 10, 5, 6, 6, 50, 20, 300]).code == "#NUM!"

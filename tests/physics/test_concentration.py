@@ -90,7 +90,7 @@ def test_components_of_a_batch_against_the_differential_equation():
 
 
 def test_a_continuous_stage_against_its_balance():
-    """Feed 1, water 3/5, retentate 1/5: what comes in leaves with the retentate at C or the permeate at (1 − R) C."""
+    """Feed 1, water 3/5, retentate 1/5: all leaves with the retentate at C or the permeate at (1 − R) C."""
     retentate, permeate, *_ = c.composition(NAMES, FEED, REJECTION, 5.0, 3.0, "continuous")
     assert permeate[:-1] == pytest.approx((1 - REJECTION) * retentate[:-1])
     assert FEED == pytest.approx(retentate[:-1] * 0.2 + permeate[:-1] * (0.8 + 0.6))

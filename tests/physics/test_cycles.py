@@ -31,7 +31,7 @@ def test_no_backwash_no_idle():
 
 
 def test_the_balance_of_a_day_counted_out():
-    """A day of 24 h less 2 washes of 45 min and 20 min of tests, in cycles of 32 min, counted in litres per m²."""
+    """A day of 24 h less 2 washes of 45 min and 20 min of tests, in cycles of 32 min, in litres per m²."""
     found = c.flux_net_daily(*CYCLE, 1 * MINUTE, 2 / DAY, 45 * MINUTE, 12e-3, 20 / 1440)
     cycles = (1440 - 90 - 20) / 32
     litres = cycles * (80 * 0.5 - 200 / 60) - 2 * 12
@@ -72,7 +72,7 @@ def test_a_day_over_ranges():
 
 
 def test_availability_counts_out():
-    """Weeks of 168 h with 8 h of cleaning and half an hour of test on each day: 168 − 8 − 3.5 h in service."""
+    """A week of 168 h with 8 h of cleaning and half an hour of test a day: 168 − 8 − 3.5 h in service."""
     service = 168 - 8 - 3.5
     assert c.availability(service * HOUR, 8 * HOUR, 0.5 / 24) == pytest.approx(service / 168)
     assert c.availability(100 * HOUR, 0.0) == 1

@@ -125,7 +125,7 @@ def test_points_of_the_gel_model_give_its_time(start, diavolumes, sieving):
 
 
 def test_washing_out_against_the_differential_equation():
-    """dC/dt = −S C J A/V with the flux of the moment: the concentration arrives at e^(−S N) at the time found."""
+    """dC/dt = −S C J A/V with the flux of the moment: C arrives at e^(−S N) at the time found."""
 
     def rate(_, c):
         return -0.4 * c * min(30 * LMH, 20 * LMH * math.log(300 / c[0])) * 50.0 / 2.0

@@ -18,6 +18,8 @@ import numpy as np
 
 #: A step below this, relative to the smaller of 1 and J/k, is the last: its cube is the error that remains.
 LAST_STEP = 1e-6
+#: The same for a halving of the bracket, which leaves an error as large as itself.
+ROUNDING = 4e-16
 #: Steps before bisection is mixed in, and the most there are.
 FREE_STEPS, MOST_STEPS = 9, 200
 #: The bracket's upper end above the start: with second coefficients below 0 the start may lie below the root, by
@@ -62,9 +64,10 @@ def solve_one(
         else:
             low = x
         new = x - newton / (halley if halley > 0.5 else 0.5)
+        small = last_step
         if not low <= new <= high or (step > FREE_STEPS and step & 1):
-            new = 0.5 * (low + high)
-        if abs(new - x) <= last_step * (x if x < 1.0 else 1.0):
+            new, small = 0.5 * (low + high), ROUNDING
+        if abs(new - x) <= small * (x if x < 1.0 else 1.0):
             return min(transfer * new, darcy)
         x = new
     return math.nan
@@ -118,20 +121,20 @@ def _solve_piece(terms, law, darcy, transfer, bulk, rejection, x, low, high, las
         astray = ~((low <= new) & (new <= high))
         if step > FREE_STEPS and step & 1:
             astray[:] = True
+        small = last_step
         if astray.any():
             new[astray] = 0.5 * (low[astray] + high[astray])
-        moving = np.abs(new - x) > last_step * np.minimum(x, 1.0)
+            small = np.where(astray, ROUNDING, last_step)
+        done = np.abs(new - x) <= small * np.minimum(x, 1.0)
         x = new
-        left = np.count_nonzero(moving)
-        if left == 0:
-            flux[rows] = np.minimum(transfer * x, darcy)
-            return
-        if left < 0.75 * len(x):
-            done = ~moving
+        if done.any():
+            moving = ~done
             flux[rows[done]] = np.minimum(transfer[done] * x[done], darcy[done])
             darcy, transfer, bulk, rejection, passed, x, low, high, rows = (
                 a[moving] for a in (darcy, transfer, bulk, rejection, passed, x, low, high, rows))
             law = tuple(a[moving] for a in law)
+            if len(x) == 0:
+                return
 
 
 def single_bracket(nodes: np.ndarray, excess: np.ndarray):

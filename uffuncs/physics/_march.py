@@ -96,8 +96,9 @@ class March:
         k = sherwood * o.diffusion_coefficient / c.diameter
         bulk = o.feed_concentration * solute / flow
         if o.osmotic:
-            flux = flux_osmotic(self.driving * pressure, o.permeability, k, bulk, *o.coefficients,
-                                o.intrinsic_rejection)
+            # Plain floats take its fast way, whatever numbers the caller gave.
+            flux = flux_osmotic(*map(float, (self.driving * pressure, o.permeability, k, bulk, *o.coefficients,
+                                             o.intrinsic_rejection, 1.0)))
             if flux != flux:
                 raise NoResult("several fluxes, or none, satisfy the osmotic law at one place: its "
                                "coefficients bend it too far")

@@ -215,7 +215,8 @@ def module_profile_slit(
 
 
 def _inlet_reynolds(
-    feed_flow, channel_height, channel_width, spacer_voidage, filament_diameter, channel_count, viscosity, density
+    feed_flow, channel_height, channel_width, spacer_voidage, filament_diameter, channel_count, viscosity,
+    density
 ):
     """At the inlet of spacer-filled channels."""
     velocity = feed_flow / (channel_count * channel_width * channel_height * spacer_voidage)
