@@ -134,7 +134,7 @@ class CompiledFunction:
             result = self.body(*values)
         except UffuncsError as error:
             raise type(error)(f"{self.name}: {error}") from None
-        except (ZeroDivisionError, OverflowError):
+        except (ArithmeticError, ValueError):  # a plain float divides by zero, overflows, or leaves a function's domain
             result = math.nan
         if type(result) is str:
             return result
@@ -236,7 +236,7 @@ class CompiledFunction:
                 result = self.body(*values)
             except UffuncsError:
                 return np.nan if size == 1 else self._one_by_one(values, size)
-            except ZeroDivisionError:  # two single values divide by zero, whatever the rest
+            except ArithmeticError:  # two single values divide by zero, whatever the rest
                 return np.nan
             if self.record.result_by:
                 return self.record.result_quantity(values).from_si(result)

@@ -98,6 +98,8 @@ def _text_reader(function: str, argument: Argument) -> Callable:
             raise CellError(cell)
         if isinstance(cell, (bool, np.bool_)):
             raise InvalidInput(f"{name} is {str(bool(cell)).upper()}; give {_listed(argument)}")
+        if not isinstance(cell, (str, int, float)):
+            raise InvalidInput(f"{name}: {type(cell).__name__} is not a cell value")
         text = cell.strip() if isinstance(cell, str) else f"{cell:g}"
         if argument.kind == "choice":
             if text.casefold() not in choices:

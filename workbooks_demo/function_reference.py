@@ -12,6 +12,7 @@ from openpyxl import Workbook
 from openpyxl.styles import Alignment
 from openpyxl.utils import get_column_letter
 from openpyxl.worksheet.formula import ArrayFormula
+from openpyxl.worksheet.hyperlink import Hyperlink
 
 from uffuncs.cell import call
 from uffuncs.check_values import checks_of, expected
@@ -47,7 +48,8 @@ def build(path: Path) -> None:
         for record in records:
             for n, text in enumerate((record.worksheet_name, topic, result_text(record), record.summary), 1):
                 index.cell(row, n, text).alignment = Alignment(vertical="top", wrap_text=n > 2)
-            index.cell(row, 1).hyperlink = f"#'{topic}'!A{at}"
+            link = index.cell(row, 1)
+            link.hyperlink = Hyperlink(ref=link.coordinate, location=f"'{topic}'!A{at}")
             index.cell(row, 1).style = "Hyperlink"
             row += 1
             at = _function(sheet, at, record) + 2

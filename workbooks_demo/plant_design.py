@@ -20,7 +20,7 @@ from .layout import Page, add_series, column_range, save, scatter
 STAGES = 3
 PRESSURES = (0.25, 0.5, 0.75, 1, 1.25, 1.5, 1.75, 2, 2.5, 3, 3.5, 4, 5, 6)
 CONCENTRATIONS = (4, 6, 9, 13, 19, 27, 38, 52, 66, 82, 100)
-TRIAL = ((8, 96.0), (14, 80.5), (25, 64.5), (42, 51.0), (65, 38.5), (90, 29.0))  # g/L, L/(m²·h); invented
+TRIAL = ((8, 168.5), (14, 140.5), (25, 117.2), (42, 91.9), (65, 73.8), (90, 57.6))  # g/L, L/(m²·h); invented
 
 
 @dataclass(frozen=True)
@@ -64,7 +64,7 @@ def basis(workbook: Workbook) -> None:
     page.input("Protein in the feed", "C_0", 6.2, "g/L", "true protein", "feed_concentration")
     page.input("Protein in the final retentate", "C_n", 75, "g/L", "", "final_concentration")
     page.input("Process temperature", "T", 50, "°C", "within the membrane maker's limit", "temperature")
-    page.input("Intrinsic rejection of protein", "R_i", 0.985, "-", "from the trial", "intrinsic_rejection")
+    page.input("Intrinsic rejection of protein", "R_i", 0.998, "-", "from the trial", "intrinsic_rejection")
     page.section("Membrane and module")
     page.input("Clean-water flux in the test", "J_cw", 165, "L/(m²·h)", "new membrane", "clean_water_flux")
     page.input("Pressure of the test", "Δp_tm", "29 psi", "bar", "typed with its unit, as on the test sheet", "clean_water_pressure")
@@ -190,7 +190,7 @@ def transfer(workbook: Workbook) -> None:
     page.calculated("Sherwood number", "Sh", "=UF_SHERWOOD_SPACER(reynolds,schmidt)", "-", "0.065 Re^0.875 Sc^0.25", "sherwood", "0.0")
     page.output("Mass-transfer coefficient", "k", "=UF_TRANSFER_COEFFICIENT(sherwood,diffusion_coefficient,hydraulic_diameter)",
                 "L/(m²·h)", "", "transfer_coefficient")
-    page.calculated("What UF_WHY says of it", "", '=UF_WHY("UF_SHERWOOD_SPACER",reynolds,schmidt)', "", "ok: inside the fitted range",
+    page.calculated("What UF_WHY says of it", "", '=UF_WHY("UF_SHERWOOD_SPACER",reynolds,schmidt)', "", "ok where Re lies in the fitted range",
                     "", "General")
     page.section("Pressure")
     page.calculated("Loss along one module", "Δp", "=UF_PRESSURE_DROP_SPACER(velocity,channel_height,spacer_voidage,"

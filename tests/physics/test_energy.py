@@ -21,14 +21,15 @@ def why(name, *cells):
     return call("UF_WHY", [f"UF_{name}", *cells])
 
 
-# --- power ----------------------------------------------------------------------------------------------------------
+# --- power --------------------------------------------------------------------------------------------------
 
 
 @given(st.floats(-0.5e5, 1e5), st.floats(0, 3e5), st.floats(0.6e5, 1.1e5))
 def test_blower_work_is_the_integral_along_the_adiabat(inlet, rise, atmosphere):
     low, high = inlet + atmosphere, inlet + atmosphere + rise
-    work = quad(lambda p: (low / p) ** (1 / 1.4), low, high, epsabs=0, epsrel=1e-11)[0]  # ∫V dp at V = 1 at the inlet
-    assert e.blower_power(1.0, inlet + rise, inlet, 1.0, atmosphere) == pytest.approx(work, rel=1e-9, abs=1e-6)
+    work = quad(lambda p: (low / p) ** (1 / 1.4), low, high, epsabs=0, epsrel=1e-11)[0]  # ∫V dp, V = 1 at low
+    found = e.blower_power(1.0, inlet + rise, inlet, 1.0, atmosphere)
+    assert found == pytest.approx(work, rel=1e-9, abs=1e-6)
 
 
 def test_blower_at_little_pressure_is_a_pump():
@@ -55,11 +56,15 @@ def test_gauge_and_absolute_pressures():
 def test_what_is_no_compression_is_refused_in_its_own_place():
     assert call("UF_BLOWER_POWER", [1000, [[0.5], [-0.2]]])[1][0] == NUM
     assert "is below inlet_pressure" in why("BLOWER_POWER", 1000, -0.2)
-    assert np.isnan(e.blower_power(1.0, 1e5, -0.9e5, 0.6, 0.8e5)) and np.isnan(e.blower_power(1.0, 1e5, -0.8e5, 0.6, 0.8e5))
+    for inlet in (-0.9e5, -0.8e5):
+        assert np.isnan(e.blower_power(1.0, 1e5, inlet, 0.6, 0.8e5))
     assert "leaves no absolute pressure" in why("BLOWER_POWER", 1000, 0.5, -0.9, 0.6, 0.8)
 
 
-@given(st.floats(1e-4, 10), st.floats(1e3, 1e6), st.floats(1e-4, 10), st.floats(1e3, 1e6), st.floats(1e-4, 1), st.floats(0.1, 1))
+FLOW, PRESSURE = st.floats(1e-4, 10), st.floats(1e3, 1e6)
+
+
+@given(FLOW, PRESSURE, FLOW, PRESSURE, st.floats(1e-4, 1), st.floats(0.1, 1))
 def test_crossflow_energy_is_that_of_both_pumps(feed, rise, loop, drop, permeate, efficiency):
     both = e.pump_power(feed, rise, efficiency) + e.pump_power(loop, drop, efficiency)
     assert e.energy_crossflow(feed, rise, loop, drop, permeate, efficiency) == pytest.approx(
@@ -70,7 +75,8 @@ def test_a_throttled_pump_heats_the_liquid():
     """All power of a pump of efficiency 1 becomes heat: ΔT = Δp/(ρ c)."""
     power = e.pump_power(0.02, 4e5, 1.0)
     assert e.temperature_rise(power, 0.02, 1000.0, 4180.0) == pytest.approx(4e5 / 4.18e6, rel=1e-14)
-    assert call("UF_TEMPERATURE_RISE", [10, "10 m³/h"]) == pytest.approx(10e3 / (10 / 3600 * 1000 * 4180), rel=1e-13)
+    rise = 10e3 / (10 / 3600 * 1000 * 4180)
+    assert call("UF_TEMPERATURE_RISE", [10, "10 m³/h"]) == pytest.approx(rise, rel=1e-13)
 
 
 def test_no_flow_no_result():
@@ -80,7 +86,7 @@ def test_no_flow_no_result():
     assert "the permeate flow is 0" in why("ENERGY_CROSSFLOW", 10, 3, 200, 1.5, 0)
 
 
-# --- money ----------------------------------------------------------------------------------------------------------
+# --- money --------------------------------------------------------------------------------------------------
 
 
 @pytest.mark.parametrize("rate", [0.0, 1e-9, 0.01, 0.08, 1.0])
@@ -103,7 +109,7 @@ def test_small_rates_lose_no_digits(rate, life):
 def test_the_annuity_lies_above_both_its_limits(rate, life):
     factor = e._annuity_factor(rate, life)
     assert factor >= rate and factor >= 1 / life * (1 - 1e-12)
-    assert factor <= rate + 1 / life + 1e-12  # a sinking fund without interest, plus the interest on the price
+    assert factor <= rate + 1 / life + 1e-12  # savings without interest, plus the interest on the price
 
 
 def test_arrays_of_rates():
@@ -123,7 +129,8 @@ def test_a_sinking_fund_costs_less_by_the_interest_on_the_price(rate, life):
 def test_membranes_as_capital_cost_the_same():
     price, rate, life, volume = 250_000.0, 0.07, 6.0, 400_000.0
     as_membranes = call("UF_COST_MEMBRANE", [2500, 100, life, volume, rate])
-    assert call("UF_COST_TREATMENT", [price, rate, life, 0, 0, 0, 0, volume]) == pytest.approx(as_membranes, rel=1e-13)
+    as_capital = call("UF_COST_TREATMENT", [price, rate, life, 0, 0, 0, 0, volume])
+    assert as_capital == pytest.approx(as_membranes, rel=1e-13)
 
 
 def test_the_parts_of_the_cost_add_up():

@@ -1,4 +1,4 @@
-"""Osmotic pressure: common limits of the theories, the ion balance, published fits, least squares against other programs."""
+"""Osmotic pressure: limits of the theories, ion balance, published fits, least squares done another way."""
 
 import math
 from decimal import Decimal, getcontext
@@ -25,7 +25,7 @@ def why(name, *cells):
     return call("UF_WHY", [f"UF_{name}", *cells])
 
 
-# --- theories -------------------------------------------------------------------------------------------------------
+# --- theories -----------------------------------------------------------------------------------------------
 
 
 @given(st.floats(0, 1000), st.floats(0.1, 500), st.floats(273, 350))
@@ -44,7 +44,7 @@ def test_hard_spheres_have_the_virial_coefficients_of_hard_spheres():
     for c in (1.0, 2.0, 5.0):
         virial = o.osmotic_virial(c, mass, 4 * v / mass, 10 * v**2 / mass)
         # what is left is of fourth order: 18.36 φ³ by the exact coefficient, 18 by this equation
-        rest = o.osmotic_hard_sphere(c, mass, v) / o.osmotic_vant_hoff(c, mass) - virial / o.osmotic_vant_hoff(c, mass)
+        rest = (o.osmotic_hard_sphere(c, mass, v) - virial) / o.osmotic_vant_hoff(c, mass)
         assert rest == pytest.approx(18 * (c * v) ** 3, rel=0.02)
 
 
@@ -57,7 +57,7 @@ def test_hard_spheres_are_refused_above_the_fluid_branch():
     assert "above 0.49" in why("OSMOTIC_HARD_SPHERE", 600, 50, 1)
 
 
-# --- Donnan ---------------------------------------------------------------------------------------------------------
+# --- Donnan -------------------------------------------------------------------------------------------------
 
 IONS = st.tuples(st.floats(0, 600), st.floats(1, 500), st.floats(-200, 200), st.floats(0, 2000))
 
@@ -73,7 +73,8 @@ def test_donnan_term_is_the_excess_of_ions(case):
     concentration, mass, charge, salt = case
     fixed = abs(charge) * concentration / mass
     # The counter-ion is at least what the charge and the salt each need, at most their sum.
-    counter = brentq(lambda c: c * (c - fixed) - salt**2, max(fixed, salt) * (1 - 1e-12), fixed + salt + 1e-9, xtol=1e-12)
+    low, high = max(fixed, salt) * (1 - 1e-12), fixed + salt + 1e-9
+    counter = brentq(lambda c: c * (c - fixed) - salt**2, low, high, xtol=1e-12)
     excess = counter + (counter - fixed) - 2 * salt
     assert ion_term(*case) == pytest.approx(excess, rel=1e-7, abs=1e-8 * (1 + concentration / mass))
     mirrored = o.osmotic_donnan(concentration, mass, -charge, salt, 0.0, 0.0, 300.0)
@@ -108,7 +109,7 @@ def test_salt_screens_the_charge():
     assert np.all(np.diff(pressures) < 0)
 
 
-# --- polynomials and powers -----------------------------------------------------------------------------------------
+# --- polynomials and powers ---------------------------------------------------------------------------------
 
 
 @given(st.floats(0, 500), *[st.floats(-10, 10)] * 3)
@@ -126,15 +127,16 @@ def test_a_negative_pressure_stands_with_a_caution():
 
 @pytest.mark.parametrize("name", FITTED_SOLUTES)
 def test_a_published_fit(name):
-    """Three coefficients, one temperature and range; rising all over it; what UF_SOLUTE gives is what is used."""
+    """Three coefficients, one temperature and range, rising all over it; UF_SOLUTE gives what is used."""
     rows = [solute_table()[name][f"osmotic_coefficient_{n}"] for n in (1, 2, 3)]
     assert len({(r.temperature, r.lowest, r.highest) for r in rows}) == 1
     grid = np.linspace(rows[0].lowest, rows[0].highest, 50)
     assert np.all(np.diff(o.osmotic_solute(name, grid)) > 0)
     coefficients = [call("UF_SOLUTE", [name, f"osmotic_coefficient_{n}"]) for n in (1, 2, 3)]
     half = float(grid[25])
-    assert call("UF_OSMOTIC_SOLUTE", [name, half]) == pytest.approx(call("UF_OSMOTIC_POLYNOMIAL", [half, *coefficients]), rel=1e-13)
-    # At the start the slope is R T/M of a molar mass that a retained solute may have; whey's holds smaller ones too.
+    by_hand = call("UF_OSMOTIC_POLYNOMIAL", [half, *coefficients])
+    assert call("UF_OSMOTIC_SOLUTE", [name, half]) == pytest.approx(by_hand, rel=1e-13)
+    # At the start the slope is R T/M of a molar mass that retained solutes may have; whey holds small ones too.
     assert 5 < R * rows[0].temperature / rows[0].value < 300
     highest = rows[0].highest
     assert why("OSMOTIC_SOLUTE", name, highest).startswith(f"ok: at {rows[0].temperature - 273.15:g} °C")
@@ -145,7 +147,8 @@ def test_a_published_fit(name):
 def test_a_solute_without_a_fit():
     assert call("UF_OSMOTIC_SOLUTE", ["lysozyme", 50]) == NA
     assert "no osmotic_coefficient_1 of lysozyme" in why("OSMOTIC_SOLUTE", "lysozyme", 50)
-    assert call("UF_OSMOTIC_SOLUTE", ["whey", 50]) == NA and "is it whey protein?" in why("OSMOTIC_SOLUTE", "whey", 50)
+    assert call("UF_OSMOTIC_SOLUTE", ["whey", 50]) == NA
+    assert "is it whey protein?" in why("OSMOTIC_SOLUTE", "whey", 50)
 
 
 def test_ranges_of_solutes_and_concentrations():
@@ -154,7 +157,7 @@ def test_ranges_of_solutes_and_concentrations():
     assert [row[1] for row in block] == [NA, NA]
 
 
-# --- least squares --------------------------------------------------------------------------------------------------
+# --- least squares ------------------------------------------------------------------------------------------
 
 CONCENTRATIONS = np.array([0, 20, 40, 80, 120, 160, 200, 250, 300.0])
 TRUE = (35.0, 0.08, 8e-4)  # Pa/(kg/m³)^n
@@ -176,8 +179,8 @@ def test_exact_data_give_their_coefficients_back(terms):
 def test_against_another_least_squares(terms):
     noisy = powers(CONCENTRATIONS, *TRUE) * (1 + 0.03 * np.sin(7 * CONCENTRATIONS)) + 5
     found = o.osmotic_fit(CONCENTRATIONS, noisy, float(terms))
-    coefficients, covariance = curve_fit(powers, CONCENTRATIONS, noisy, p0=TRUE[:terms], x_scale=TRUE[:terms], method="trf",
-                                         xtol=1e-14, ftol=1e-14, gtol=1e-14)
+    coefficients, covariance = curve_fit(powers, CONCENTRATIONS, noisy, p0=TRUE[:terms], x_scale=TRUE[:terms],
+                                         method="trf", xtol=1e-14, ftol=1e-14, gtol=1e-14)
     assert found[:terms] == pytest.approx(coefficients, rel=1e-5)
     assert found[terms:-1] == pytest.approx(np.sqrt(np.diag(covariance)), rel=1e-4)
     rest = noisy - powers(CONCENTRATIONS, *coefficients)
@@ -220,12 +223,14 @@ def test_columns_of_the_block_follow_the_terms():
     assert 0.9 < call("UF_OSMOTIC_FIT", [c, p, 1])[0][-1] <= 1
     in_psi = [["20 g/L", "0.35 psi"], ["40 g/L", "0.8 psi"], ["60 g/L", "1.4 psi"]]
     fit = call("UF_OSMOTIC_FIT", [[[r[0]] for r in in_psi], [[r[1]] for r in in_psi], 1])
-    assert fit[0][0] == pytest.approx((20 * 0.35 + 40 * 0.8 + 60 * 1.4) / (400 + 1600 + 3600) * 0.0689475729, rel=1e-8)
+    slope = (20 * 0.35 + 40 * 0.8 + 60 * 1.4) / (400 + 1600 + 3600)
+    assert fit[0][0] == pytest.approx(slope * 0.0689475729, rel=1e-8)
 
 
 def test_blank_rows_do_not_count():
     full = call("UF_OSMOTIC_FIT", [[[10], [20], [30]], [[0.011], [0.024], [0.041]], 1])
-    assert call("UF_OSMOTIC_FIT", [[[10], [None], [20], [30]], [[0.011], [None], [0.024], [0.041]], 1]) == full
+    gap = [[[10], [None], [20], [30]], [[0.011], [None], [0.024], [0.041]]]
+    assert call("UF_OSMOTIC_FIT", [*gap, 1]) == full
     assert call("UF_OSMOTIC_FIT", [[[10], [20], [30]], [[0.011], [0.024]], 1]) == ErrorValue("#VALUE!")
 
 

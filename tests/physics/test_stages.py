@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
-from scipy.optimize import differential_evolution, minimize
+from scipy.optimize import differential_evolution, minimize, minimize_scalar
 
 from uffuncs.cell import call
 from uffuncs.physics import _least_area as least
@@ -228,6 +228,20 @@ def test_two_ways_to_the_least_area_agree(stages, y_first, share, rejection, kin
     assert searched is not None
     if shot is not None:
         assert shot == pytest.approx(searched, abs=1e-8 * (y_first - y_last))
+
+
+def test_a_first_stage_short_of_the_kink():
+    """With product to lose the optimum may lie inside the range of the highest flux: there the area is stationary."""
+    law = gel_law(math.exp(-1.5407), 1.0, 1.0, 1.3779)
+    logs = least.least_area_logs(law, -1.5407, -1.348, 2, 0.5)
+    assert -1.5407 < logs[0] < -1.3779 - 0.01
+
+    def area(log):
+        return total_area(
+            [math.exp(log)], 1.0, math.exp(-1.5407), math.exp(-1.348), lambda c: min(1.3779, -math.log(c)), 0.5)
+
+    best = minimize_scalar(area, bounds=(-1.54, -1.35), method="bounded", options={"xatol": 1e-12}).x
+    assert logs[0] == pytest.approx(best, abs=1e-7)
 
 
 def test_slopes_of_the_area_against_differences():

@@ -69,6 +69,14 @@ def test_the_lowest_of_several_operating_points():
     assert found == pytest.approx(np.linspace(10, 99, 20000)[crossings[0]], abs=0.01)
 
 
+def test_an_operating_point_between_two_points_that_have_none():
+    """On one rising piece: the membrane passes too much at both its ends, and less than the balance in between."""
+    c, j = np.array([10.0, 40.0, 200.0]), np.array([0.1, 0.8, 0.5]) * FLOW / 50.0
+    found = s.stages_rated(FLOW, 10.0, np.array([50.0]), c, j)[0][0]
+    assert 10 < found < 20
+    assert 0.1 + 0.7 * math.log(found / 10) / math.log(4) == pytest.approx(1 - 10 / found, rel=1e-12)
+
+
 def test_rated_refusals(why):
     points = [[[c] for c in C], [[j / LMH] for j in J]]
     assert "stage 2 of 5000 m²" in why("UF_STAGES_RATED", 10, 10, [[100], [5000]], *points)

@@ -22,6 +22,9 @@ from .osmotic_flux import flux_osmotic
 #: Relative tolerance of a step, the absolute one on values that are 1 at the inlet, and the longest step in
 #: s: a long one may step over the kinks at the Reynolds numbers where the laws change.
 TOLERANCE, SMALL, LONGEST = 1e-11, 1e-13, 0.125
+#: Evaluations after which it is given up: the usual module takes 150, one that is stiff because its flux dies out at
+#: once would take millions.
+MOST_EVALUATIONS = 6000
 #: Share of the feed flow that counts as used up.
 USED_UP = 1e-6
 #: 1/Gz that stands for the inlet itself, where the local coefficient is infinite.
@@ -78,7 +81,7 @@ class March:
     """
 
     def __init__(self, channels: Channels, operation: Operation):
-        self.channels, self.operation = channels, operation
+        self.channels, self.operation, self.evaluations = channels, operation, 0
         self.velocity = operation.feed_flow / channels.flow_area
         self.driving = operation.feed_pressure - operation.permeate_pressure
         self.schmidt = schmidt_number(operation.viscosity, operation.density, operation.diffusion_coefficient)
@@ -123,6 +126,9 @@ class March:
 
     def rates(self, s: float, state: np.ndarray) -> tuple[float, float, float, float]:
         """d(state)/ds at s = (x/L)^⅓; states that a trial step overshoots to are held inside."""
+        self.evaluations += 1
+        if self.evaluations > MOST_EVALUATIONS:
+            raise NoResult("the flux dies out long before the outlet: far more membrane than the feed flow can use")
         flow, solute, pressure, passed = state.tolist()
         flow, pressure = max(flow, 1e-9), max(pressure, 0.0)
         stretch = 3.0 * s * s

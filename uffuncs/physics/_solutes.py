@@ -85,7 +85,8 @@ def properties_of(solute: str) -> dict[str, Entry]:
         return table[name]
     from difflib import get_close_matches
 
-    near = get_close_matches(name, table, n=3, cutoff=0.5) or [n for n in table if name and name in n]
+    near = get_close_matches(name, table, n=3, cutoff=0.5)
+    near = near or [known for known in table if len(name) > 2 and name in known]
     hint = f"is it {' or '.join(near)}?" if near else f"there are: {', '.join(table)}"
     raise NotAvailable(f"the table has no solute '{solute[:40]}'; {hint}")
 

@@ -61,7 +61,7 @@ def blower_power(
     standard or normal air.
     """
     compresses = _compresses(outlet_pressure, inlet_pressure, atmospheric_pressure)
-    inlet = np.where(compresses, inlet_pressure + atmospheric_pressure, np.nan)
+    inlet = np.where(compresses, inlet_pressure + atmospheric_pressure, np.nan)[()]
     exponent = 1.0 - 1.0 / AIR_HEAT_CAPACITY_RATIO
     work = inlet / exponent * np.expm1(exponent * np.log1p((outlet_pressure - inlet_pressure) / inlet))
     return air_flow * work / efficiency
@@ -114,7 +114,7 @@ def energy_crossflow(
 
 def _annuity_factor(rate: Number, years: Number) -> Number:
     """Yearly payment per capital, at the end of each year: i/(1 − (1 + i)^−n), and 1/n at rate 0."""
-    some = np.where(rate > 0, rate, 1.0)
+    some = np.where(rate > 0, rate, 1.0)[()]
     return np.where(rate > 0, some / -np.expm1(-years * np.log1p(some)), 1.0 / years)[()]
 
 

@@ -156,7 +156,7 @@ def osmotic_hard_sphere(
     """
     filling = concentration * partial_specific_volume
     # A hair of slack: 490 g/L at 1 mL/g may come out above 0.49 by rounding.
-    filling = np.where(filling <= HIGHEST_FLUID_FRACTION * (1 + 1e-12), filling, np.nan)
+    filling = np.where(filling <= HIGHEST_FLUID_FRACTION * (1 + 1e-12), filling, np.nan)[()]
     factor = (1.0 + filling * (1.0 + filling * (1.0 - filling))) / (1.0 - filling) ** 3
     return GAS_CONSTANT * temperature * concentration / molar_mass * factor
 
@@ -211,7 +211,7 @@ _ORDER = ("first", "second", "third")
         *(f"{order}_coefficient" for order in _ORDER),
         *(replace(quantity(f"{order}_coefficient"), name=f"{order}_standard_error", symbol=f"s_{n}", low=0.0,
                   meaning=f"Standard error of the {order} coefficient") for n, order in enumerate(_ORDER, 1)),
-        "coefficient_of_determination",
+        replace(quantity("coefficient_of_determination"), meaning="Share of Σπ² that the fit explains"),
     ],
     columns=lambda terms: (*range(int(terms)), *range(3, 3 + int(terms)), 6),
     equation="π = Σ b_n C^n, n = 1 … terms; Σ(π − π_fit)² least; r² = 1 − Σ(π − π_fit)²/Σπ²",
@@ -221,7 +221,8 @@ _ORDER = ("first", "second", "third")
 def osmotic_fit(concentration: Column, osmotic_pressure: Column, terms: Number = 3.0) -> tuple:
     """Polynomial through the origin fitted to measured osmotic pressures.
 
-    One row: as many coefficients as terms, as many standard errors, r². Every point has the same weight.
+    One row: as many coefficients as terms, as many standard errors, r²; there are no columns for terms left
+    out. Every point has the same weight.
     Without an intercept r² is about zero, not about the mean, as certified for such fits: it is near 1 for
     almost any rising data, so look at the standard errors. At least one more point than terms is needed.
     """

@@ -97,10 +97,10 @@ def viscosity_suspension(
     The defaults are random close packing and Einstein's 2.5 for spheres. Suspensions thin with shear: φ_m is
     about 0.63 at low and 0.71 at high shear (common practice, no source). Dilute: µ_0 (1 + [η]_φ φ).
     """
-    flows = np.where(volume_fraction < maximum_volume_fraction, volume_fraction, np.nan)
+    flows = np.where(volume_fraction < maximum_volume_fraction, volume_fraction, np.nan)[()]
     power = intrinsic_viscosity_number * maximum_volume_fraction
     exponent = -power * np.log1p(-flows / maximum_volume_fraction)
-    return solvent_viscosity * np.exp(np.where(exponent <= LARGEST_EXPONENT, exponent, np.nan))
+    return solvent_viscosity * np.exp(np.where(exponent <= LARGEST_EXPONENT, exponent, np.nan)[()])
 
 
 @worksheet_function(
@@ -308,7 +308,7 @@ def donnan_ratio(
     (1 − φ)²/r.
     """
     free = 1.0 - concentration * partial_specific_volume
-    free = np.where(free > 0.0, free, np.nan)
+    free = np.where(free > 0.0, free, np.nan)[()]
     charge = abs(charge_number) * concentration / (2.0 * molar_mass * free)
     # (1 + y²)^½ − y without cancellation: the tangent of half the angle whose tangent is 1/y
     return free * np.tan(0.5 * np.arctan2(salt_concentration, charge))

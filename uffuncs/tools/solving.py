@@ -10,7 +10,7 @@ import numpy as np
 
 from ..cell import compile_function
 from ..declaration import Argument, Function, cell_tool
-from ..errors import ErrorValue, InvalidInput, NoResult, NotAvailable, UffuncsError
+from ..errors import ErrorValue, InvalidInput, NoResult, NotAvailable
 from ..quantities import Quantity
 from ..reading import is_blank, make_reader
 from ..reasons import cautions
@@ -96,12 +96,8 @@ class _Problem:
             with np.errstate(all="ignore"):
                 try:
                     return body(*values[:index], x, *values[index + 1:])
-                except ZeroDivisionError:
-                    return math.nan
-                except UffuncsError:
-                    if isinstance(x, np.ndarray):
-                        return np.array([f(float(v)) for v in x])
-                    return math.nan
+                except (ArithmeticError, ValueError):  # a refusal, or a plain float outside a function's domain
+                    return np.array([f(float(v)) for v in x]) if isinstance(x, np.ndarray) else math.nan
 
         return f
 
