@@ -20,6 +20,7 @@ def __getattr__(name: str):
 
         record = find("UF_" + name)
         if isinstance(record, Function) and record.python.__name__ == name:
+            globals()[name] = record.python
             return record.python
     raise AttributeError(f"module 'uffuncs' has no attribute '{name}'")
 

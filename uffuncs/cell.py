@@ -187,21 +187,21 @@ class CompiledFunction:
         size = shape[0] * shape[1]
         flat = [g.flat(shape) for g in grids]
         out = np.full(size, np.nan)
+        failed: dict[int, ErrorValue] = {}
         if errors:
             good = np.ones(shape, bool)
             good[tuple(np.array(list(errors)).T)] = False
             keep = np.flatnonzero(good)
-            self._pieces([f if g.single else f[keep] for f, g in zip(flat, grids)], grids, keep, out)
+            self._pieces([f if g.single else f[keep] for f, g in zip(flat, grids)], grids, keep, out, failed)
         else:
-            self._pieces(flat, grids, None, out)
+            self._pieces(flat, grids, None, out, failed)
         bad = np.flatnonzero(~np.isfinite(out)) if not math.isfinite(out.sum()) else ()
         for index in bad:
-            at = divmod(int(index), shape[1])
-            errors.setdefault(at, _NO_RESULT)
+            errors.setdefault(divmod(int(index), shape[1]), failed.get(int(index), _NO_RESULT))
         return out.reshape(shape), errors
 
-    def _pieces(self, flat: list, grids: list, keep: np.ndarray | None, out: np.ndarray):
-        """Compute `out[keep]` piece by piece; text arguments are fixed within a piece."""
+    def _pieces(self, flat: list, grids: list, keep: np.ndarray | None, out: np.ndarray, failed: dict):
+        """Compute `out[keep]` piece by piece; text arguments are fixed within a piece. What a body refuses goes to `failed`."""
         size = len(out) if keep is None else len(keep)
         texts = [i for i, g in enumerate(grids) if not g.single and g.is_text]
         if texts:
@@ -212,11 +212,12 @@ class CompiledFunction:
                 for i, text in zip(texts, kind):
                     part[i] = text
                 self._compute(part, [g.single or i in texts for i, g in enumerate(grids)], len(rows), out,
-                              rows if keep is None else keep[rows])
+                              rows if keep is None else keep[rows], failed)
         else:
-            self._compute(flat, [g.single for g in grids], size, out, keep)
+            self._compute(flat, [g.single for g in grids], size, out, keep, failed)
 
-    def _compute(self, flat: list, single: list[bool], size: int, out: np.ndarray, keep: np.ndarray | None):
+    def _compute(self, flat: list, single: list[bool], size: int, out: np.ndarray, keep: np.ndarray | None,
+                 failed: dict):
         scale_of = [(a.quantity.scale, a.quantity.offset) if a.quantity else (1.0, 0.0) for a in self.record.arguments]
         for start in range(0, size, PIECE):
             part = slice(start, min(start + PIECE, size))
@@ -227,28 +228,29 @@ class CompiledFunction:
                 else:
                     x = f[part] * scale
                     values.append(x + offset if offset else x)
-            result = self._body(values, part.stop - part.start)
-            out[part if keep is None else keep[part]] = result
+            places = part if keep is None else keep[part]
+            try:
+                out[places] = self._body(values)
+            except UffuncsError:  # a body that refuses the whole array: one by one, so that only the bad ones fail
+                numbers = np.arange(part.start, part.stop) if keep is None else keep[part]
+                for n, place in enumerate(numbers):
+                    try:
+                        out[place] = self._body([v[n].item() if isinstance(v, np.ndarray) and not fixed else v
+                                                 for v, fixed in zip(values, single)])
+                    except UffuncsError as error:
+                        failed[int(place)] = error.as_cell()
 
-    def _body(self, values: list, size: int) -> np.ndarray | float:
+    def _body(self, values: list) -> np.ndarray | float:
         with np.errstate(all="ignore"):
             try:
                 result = self.body(*values)
             except UffuncsError:
-                return np.nan if size == 1 else self._one_by_one(values, size)
-            except ArithmeticError:  # two single values divide by zero, whatever the rest
+                raise
+            except (ArithmeticError, ValueError):  # single values divide by zero, whatever the rest
                 return np.nan
             if self.record.result_by:
                 return self.record.result_quantity(values).from_si(result)
             return (result - self.offset) / self.scale if self.offset else result / self.scale
-
-    def _one_by_one(self, values: list, size: int) -> np.ndarray:
-        """A body that refuses a whole array: element by element, so that only the bad ones fail."""
-        out = np.full(size, np.nan)
-        for n in range(size):
-            element = [float(v[n]) if isinstance(v, np.ndarray) and v.shape == (size,) else v for v in values]
-            out[n] = self._body(element, 1)
-        return out
 
     # --- functions that take whole ranges, or give a block -------------------------------------------------------
 

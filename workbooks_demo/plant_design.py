@@ -51,6 +51,7 @@ def build(path: Path) -> None:
     concentration_curve(workbook)
     cascade(workbook)
     energy_and_cost(workbook)
+    questions(workbook)
     notes(workbook)
     key_results(summary)
     save(workbook, path)
@@ -154,8 +155,8 @@ def trial(workbook: Workbook) -> None:
     for n, (label, symbol, unit, name, fmt) in enumerate((
             ("Mass-transfer coefficient", "k", "L/(m²·h)", "trial_k", "0.00"),
             ("Gel concentration", "C_g", "g/L", "trial_gel", "0.0"),
-            ("Standard error of k", "", "L/(m²·h)", "", "0.00"),
-            ("Standard error of C_g", "", "g/L", "", "0.0"),
+            ("Standard error of k", "", "L/(m²·h)", "trial_k_error", "0.00"),
+            ("Standard error of C_g", "", "g/L", "trial_gel_error", "0.0"),
             ("Coefficient of determination", "r²", "-", "", "0.0000"),
             ("95 % interval of C_g, lower end", "", "g/L", "", "0.0"),
             ("95 % interval of C_g, upper end", "", "g/L", "", "0.0")), 1):
@@ -376,6 +377,41 @@ def energy_and_cost(workbook: Workbook) -> None:
     page.input("Contact time", "", 0.5, "h", "", "chlorine_time")
     page.calculated("Exposure in a year", "", "=UF_CHEMICAL_EXPOSURE(chlorine,chlorine_time,cleanings)", "g·h/(L·year)",
                     "compare with the maker's lifetime limit", "", "0.0")
+
+
+def questions(workbook: Workbook) -> None:
+    page = Page(workbook, "Questions", "Questions a reviewer asks", "Live cells instead of Goal Seek, a spread instead of a bare number, "
+                "claims against calculated values.")
+    osmotic = "permeability,transfer_coefficient,mean_concentration,osmotic_1,osmotic_2,osmotic_3,intrinsic_rejection"
+    page.section("Which pressure gives the flux wanted?")
+    page.input("Flux wanted", "J", "60 gfd", "L/(m²·h)", "at the mean concentration", "wanted_flux")
+    page.output("Transmembrane pressure", "Δp_tm", f'=UF_SOLVE_FOR("UF_FLUX_OSMOTIC","transmembrane_pressure",wanted_flux,,{osmotic})',
+                "bar", "solved within the bounds of the argument", "wanted_pressure", "0.000")
+    page.check("The flux comes back?", f'=IF(ABS(UF_FLUX_OSMOTIC(wanted_pressure,{osmotic})-UF_CONVERT(60,"gfd","LMH"))<0.0000001,"ok","differs")')
+    page.section("How far does the trial's uncertainty spread the area?")
+    page.calculated("Mass-transfer coefficient with its uncertainty", "k", '=UF_QUANTITY(ROUND(trial_k,3),"L/(m²·h)",ROUND(trial_k_error,3))', "",
+                    "standard error of the fit", "uncertain_k", "General")
+    page.calculated("Gel concentration with its uncertainty", "C_g", '=UF_QUANTITY(ROUND(trial_gel,2),"g/L",ROUND(trial_gel_error,2))', "", "",
+                    "uncertain_gel", "General")
+    first = page.row
+    for label, unit, fmt in (
+        ("Area of one batch stage for 1 m³ in 6 min: mean", "m²", "0.00"), ("Standard uncertainty", "m²", "0.00"), ("2.5 % point", "m²", "0.00"),
+        ("97.5 % point", "m²", "0.00"), *((f"Share of the variance: {name}", "-", "0 %") for name in (
+            "feed volume", "feed concentration", "concentration factor", "time", "mass-transfer coefficient", "gel concentration")),
+    ):
+        page.calculated(label, "", None, unit, "", "", fmt)
+    page.array(f"C{first}", f"C{page.row - 1}", '=TRANSPOSE(UF_UNCERTAINTY("UF_BATCH_AREA",1,feed_concentration,'
+               "final_concentration/feed_concentration,0.1,uncertain_k,uncertain_gel))", "0.00")
+    for row in range(first + 4, page.row):
+        page.sheet[f"C{row}"].number_format = "0 %"
+    page.section("Do a bidder's numbers hold?")
+    for label, claimed, calculated, sense, unit in (
+        ("Mean flux of the cascade, claimed", "75 gfd", "mean_flux", "at most", "L/(m²·h)"),
+        ("Membrane area installed, claimed", 300, "installed_area", "at least", "m²"),
+        ("Specific energy, claimed", 0.25, "specific_energy", "equal", "kWh/m³"),
+    ):
+        cell = page.input(label, "", claimed, unit, "invented bid")
+        page.calculated("  verdict", "", f'=UF_CLAIM({cell},{calculated},0.15,"{sense}","{unit}")', "", f"{sense} the calculated value, 15 %", "", "General")
 
 
 def key_results(page: Page) -> None:

@@ -1,8 +1,8 @@
 """Flux by the osmotic-pressure model for each law of osmotic pressure, for one row of plain floats and for arrays.
 
-What is common: H = L_p σ [π(C_w) − π(C_p)] is the flux taken by the osmotic pressure, `darcy` is L_p Δp. Where H at no flux
-is L_p Δp or more, the flux is 0. NaN where there is no single flux: the mass-transfer coefficient is 0, several fluxes solve
-the equation, or none between 0 and L_p Δp.
+In all: H = L_p σ [π(C_w) − π(C_p)] is the flux taken by the osmotic pressure, `darcy` is L_p Δp. Where H at no flux
+is L_p Δp or more, the flux is 0. NaN where there is no single flux: the mass-transfer coefficient is 0, or not
+exactly one flux from 0 to L_p Δp solves the equation.
 """
 
 from __future__ import annotations
@@ -14,8 +14,10 @@ import numpy as np
 from ._flux_solver import LAST_STEP, single_bracket, solve_one, solve_rows, start_one, start_rows
 from ._osmotic_table import OsmoticTable
 
-#: Points of the scan for several fluxes, even on the logarithm of the surface concentration; rows scanned at a time.
-SCAN, SCAN_ROWS = 200, 512
+#: Points of the scan for several fluxes, even on the logarithm of the surface concentration.
+SCAN = 200
+#: Rows scanned at a time.
+SCAN_ROWS = 512
 #: Cubic pieces meet with a jump of the second derivative, which a last step of the usual size could cross.
 TABLE_LAST_STEP = 1e-9
 #: Highest J/k in a search at full rejection: e^690 times any concentration is still a number.
@@ -27,7 +29,7 @@ def without_osmosis(bulk, permeability, rejection, reflection):
     return (bulk == 0.0) | (permeability == 0.0) | (rejection == 0.0) | (reflection == 0.0)
 
 
-# --- polynomial ----------------------------------------------------------------------------------------------------
+# --- polynomial ---------------------------------------------------------------------------------------------
 
 
 def _polynomial_terms(c, first, second, third):
@@ -35,15 +37,27 @@ def _polynomial_terms(c, first, second, third):
     return one + two + three, one + 2.0 * two + 3.0 * three, one + 4.0 * two + 9.0 * three
 
 
-def _difference_coefficients(first, second, third, rejection):
-    """π(C_w) − π(C_p) is a polynomial of C_w too: b_n (1 − (1 − R)^n), here without the common factor R."""
+def difference_coefficients(first, second, third, rejection):
+    """π(C_w) − π(C_p) is R times a polynomial of C_w too: b_n (1 − (1 − R)^n)/R."""
     passed = 1.0 - rejection
     return first, second * (1.0 + passed), third * (1.0 + passed + passed * passed)
 
 
 def _rises(first, second, third):
-    """Whether the polynomial rises for every concentration: its slope b_1 + 2 b_2 c + 3 b_3 c² has no root above 0."""
+    """Whether the polynomial rises at all concentrations: b_1 + 2 b_2 c + 3 b_3 c² is nowhere below 0."""
     return (first >= 0.0) & (third >= 0.0) & ((second >= 0.0) | (second * second < 3.0 * first * third))
+
+
+def _least_slope(first, second, third, low, high):
+    """Least b_1 + 2 b_2 c + 3 b_3 c² from `low` to `high`."""
+    vertex = min(max(-second / (3.0 * third), low), high) if third > 0.0 else low
+    return min(first + c * (2.0 * second + 3.0 * third * c) for c in (low, vertex, high))
+
+
+def _rises_to_end(first, second, third, bulk, limit, rejection) -> bool:
+    """Whether the polynomial rises, and is not below 0 in the end, between C_b and the C_w at J = L_p Δp."""
+    end = bulk / (rejection * math.exp(-min(limit, FARTHEST)) + (1.0 - rejection))
+    return first + end * (second + end * third) >= 0.0 and _least_slope(first, second, third, bulk, end) >= 0.0
 
 
 def polynomial_one(pressure, permeability, transfer, bulk, b1, b2, b3, rejection, reflection) -> float:
@@ -52,10 +66,12 @@ def polynomial_one(pressure, permeability, transfer, bulk, b1, b2, b3, rejection
         return darcy
     if transfer == 0.0:
         return math.nan
-    d1, d2, d3 = _difference_coefficients(b1, b2, b3, rejection)
-    if not _rises(d1, d2, d3):
+    d1, d2, d3 = difference_coefficients(b1, b2, b3, rejection)
+    rises, limit = _rises(d1, d2, d3), darcy / transfer
+    if not rises and not _rises_to_end(d1, d2, d3, bulk, limit, rejection):
         row = (pressure, permeability, transfer, bulk, b1, b2, b3, rejection, reflection)
-        return float(polynomial_rows(*(np.array([v]) for v in row))[0])
+        with np.errstate(all="ignore"):
+            return float(polynomial_rows(*(np.array([v]) for v in row))[0])
     factor = permeability * reflection * rejection
     d1, d2, d3 = factor * d1, factor * d2, factor * d3
 
@@ -70,31 +86,33 @@ def polynomial_one(pressure, permeability, transfer, bulk, b1, b2, b3, rejection
         most = min(most, math.sqrt(darcy / d2))
     if d3 > 0.0:
         most = min(most, math.cbrt(darcy / d3))
-    x, high = start_one(terms, bulk / most, darcy / transfer, transfer, bulk, rejection)
-    return solve_one(terms, darcy, transfer, bulk, rejection, x, high)
+    x, high = start_one(terms, bulk / most, limit, transfer, bulk, rejection)
+    return solve_one(terms, darcy, transfer, bulk, rejection, x, high if rises else min(limit, FARTHEST))
 
 
 def polynomial_rows(pressure, permeability, transfer, bulk, b1, b2, b3, rejection, reflection) -> np.ndarray:
     """polynomial_one for arrays of one size."""
     darcy = permeability * pressure
-    d1, d2, d3 = _difference_coefficients(b1, b2, b3, rejection)
+    d1, d2, d3 = difference_coefficients(b1, b2, b3, rejection)
     factor = permeability * reflection * rejection
-    plain = without_osmosis(bulk, permeability, rejection, reflection) | ((b1 == 0.0) & (b2 == 0.0) & (b3 == 0.0))
+    plain = without_osmosis(bulk, permeability, rejection, reflection)
+    plain |= (b1 == 0.0) & (b2 == 0.0) & (b3 == 0.0)
     law = np.stack([factor * d1, factor * d2, factor * d3])
     flux = np.where(plain, darcy, np.nan)
-    open_rows = ~plain & (transfer > 0.0)
-    simple = open_rows & _rises(d1, d2, d3)
+    sound = ~plain & (transfer > 0.0)
+    simple = sound & _rises(d1, d2, d3)
     start = _polynomial_terms(bulk, *law)[0]
     flux[simple & (start >= darcy)] = 0.0
-    solved = simple & (start < darcy)
-    if solved.any():
-        law_s, (a, k, c, r) = tuple(law[:, solved]), (v[solved] for v in (darcy, transfer, bulk, rejection))
+    rows = simple & (start < darcy)
+    if rows.any():
+        law_r = tuple(law[:, rows])
+        a, k, c, r = (v[rows] for v in (darcy, transfer, bulk, rejection))
         most = np.full(len(a), np.inf)
-        for coefficient, root in zip(law_s, (np.positive, np.sqrt, np.cbrt)):
+        for coefficient, root in zip(law_r, (np.positive, np.sqrt, np.cbrt)):
             most = np.minimum(most, root(a / np.where(coefficient > 0.0, coefficient, 0.0)))
-        x, high = start_rows(_polynomial_terms, law_s, c / most, a / k, k, c, r)
-        flux[solved] = solve_rows(_polynomial_terms, law_s, a, k, c, r, x, np.zeros(len(x)), high)
-    careful = np.flatnonzero(open_rows & ~simple)
+        x, high = start_rows(_polynomial_terms, law_r, c / most, a / k, k, c, r)
+        flux[rows] = solve_rows(_polynomial_terms, law_r, a, k, c, r, x, np.zeros(len(x)), high)
+    careful = np.flatnonzero(sound & ~simple)
     if careful.size:
         law_c = tuple(law[:, careful])
         row = tuple(v[careful] for v in (darcy, transfer, bulk, rejection))
@@ -102,7 +120,9 @@ def polynomial_rows(pressure, permeability, transfer, bulk, b1, b2, b3, rejectio
     return flux
 
 
-def _bracketed(terms, law, darcy, transfer, bulk, rejection, low, high, solutions, last_step=LAST_STEP) -> np.ndarray:
+def _bracketed(
+    terms, law, darcy, transfer, bulk, rejection, low, high, solutions, last_step=LAST_STEP
+) -> np.ndarray:
     """Flux of rows whose solutions were counted: the single one, else NaN."""
     flux = np.full(len(low), np.nan)
     none = terms(bulk, *law)[0] >= darcy
@@ -110,22 +130,25 @@ def _bracketed(terms, law, darcy, transfer, bulk, rejection, low, high, solution
     rows = np.flatnonzero((solutions == 1) & ~none)
     if rows.size:
         low, high, *known = (v[rows] for v in (low, high, darcy, transfer, bulk, rejection))
-        flux[rows] = solve_rows(terms, tuple(part[rows] for part in law), *known, 0.5 * (low + high), low,
-                                high * (1.0 + 1e-9), last_step)
+        law = tuple(part[rows] for part in law)
+        middle = 0.5 * (low + high)
+        flux[rows] = solve_rows(terms, law, *known, middle, low, high * (1.0 + 1e-9), last_step)
     return flux
 
 
 def _polynomial_brackets(law, darcy, transfer, bulk, rejection):
     """Bracket of the root and number of solutions from J = 0 to L_p Δp, for any signs of the coefficients.
 
-    k x + H is monotone between its stationary points, the roots of a quartic in w = C_b/C_w:
-    k w⁴ + h_1 w³ + (2 h_2 − S h_1) w² + (3 h_3 − 2 S h_2) w − 3 S h_3 = 0 with h_n = H's terms at C_b and S = 1 − R.
+    k x + H is monotone between its stationary points, which are the roots of a quartic in w = C_b/C_w:
+    k w⁴ + h_1 w³ + (2 h_2 − S h_1) w² + (3 h_3 − 2 S h_2) w − 3 S h_3 = 0, with h_n the terms of H at C_b and
+    S = 1 − R.
     """
     passed = 1.0 - rejection
     h1, h2, h3 = (part * bulk**n for n, part in enumerate(law, 1))
+    lower = np.stack([h1, 2 * h2 - passed * h1, 3 * h3 - 2 * passed * h2, -3 * passed * h3], axis=1)
     companion = np.zeros((len(bulk), 4, 4))
     companion[:, [1, 2, 3], [0, 1, 2]] = 1.0
-    companion[:, 0] = -np.stack([h1, 2 * h2 - passed * h1, 3 * h3 - 2 * passed * h2, -3 * passed * h3], 1) / transfer[:, None]
+    companion[:, 0] = -lower / transfer[:, None]
     # The real parts of complex roots are points like any other: they do no harm.
     inverse = np.linalg.eigvals(companion).real
     end = darcy / transfer
@@ -134,11 +157,11 @@ def _polynomial_brackets(law, darcy, transfer, bulk, rejection):
     inner = np.clip(-np.log(np.where(share > 0.0, share, 1.0)), 0.0, last[:, None])
     nodes = np.sort(np.column_stack([np.zeros_like(end), inner, last]), axis=1)
     c = bulk[:, None] / (rejection[:, None] * np.exp(-nodes) + passed[:, None])
-    taken = c * (law[0][:, None] + c * (law[1][:, None] + c * law[2][:, None]))
+    first, second, third = (part[:, None] for part in law)
+    taken = c * (first + c * (second + c * third))
     excess = transfer[:, None] * nodes + taken - darcy[:, None]
-    # At the end k x is L_p Δp, up to rounding: the sign of H alone decides there.
-    excess[nodes >= end[:, None]] = taken[nodes >= end[:, None]]
-    return single_bracket(nodes, excess)
+    # At the end k x is L_p Δp up to rounding: the sign of H alone decides there.
+    return single_bracket(nodes, np.where(nodes >= end[:, None], taken, excess))
 
 
 def several_by_polynomial(
@@ -146,15 +169,16 @@ def several_by_polynomial(
     first_coefficient, second_coefficient, third_coefficient, intrinsic_rejection, reflection_coefficient,
 ) -> bool:
     """Whether several fluxes solve the equation, for the reason of a refusal."""
-    factor = permeability * reflection_coefficient * intrinsic_rejection
     coefficients = first_coefficient, second_coefficient, third_coefficient
-    law = tuple(np.array([factor * d]) for d in _difference_coefficients(*coefficients, intrinsic_rejection))
-    row = permeability * transmembrane_pressure, mass_transfer_coefficient, bulk_concentration, intrinsic_rejection
+    factor = permeability * reflection_coefficient * intrinsic_rejection
+    law = tuple(np.array([factor * d]) for d in difference_coefficients(*coefficients, intrinsic_rejection))
+    darcy = permeability * transmembrane_pressure
+    row = (np.array([v]) for v in (darcy, mass_transfer_coefficient, bulk_concentration, intrinsic_rejection))
     with np.errstate(all="ignore"):
-        return bool(_polynomial_brackets(law, *(np.array([v]) for v in row))[2][0] > 1)
+        return bool(_polynomial_brackets(law, *row)[2][0] > 1)
 
 
-# --- power law -----------------------------------------------------------------------------------------------------
+# --- power law ----------------------------------------------------------------------------------------------
 
 
 def _power_terms(c, coefficient, exponent):
@@ -168,7 +192,7 @@ def power_one(pressure, permeability, transfer, bulk, b, exponent, rejection, re
         return darcy
     if transfer == 0.0:
         return math.nan
-    # b c^n of surface less permeate is again a power law, b (1 − (1 − R)^n) C_w^n.
+    # The difference between surface and permeate is again a power law, b (1 − (1 − R)^n) C_w^n.
     kept = 1.0 if rejection == 1.0 else -math.expm1(exponent * math.log1p(-rejection))
     coefficient = permeability * reflection * b * kept
 
@@ -189,9 +213,9 @@ def power_rows(pressure, permeability, transfer, bulk, b, exponent, rejection, r
     flux = np.where(plain, darcy, np.nan)
     coefficient = permeability * reflection * b * -np.expm1(exponent * np.log1p(-rejection))
     start = _power_terms(bulk, coefficient, exponent)[0]
-    open_rows = ~plain & (transfer > 0.0)
-    flux[open_rows & (start >= darcy)] = 0.0
-    rows = open_rows & (start < darcy)
+    sound = ~plain & (transfer > 0.0)
+    flux[sound & (start >= darcy)] = 0.0
+    rows = sound & (start < darcy)
     if rows.any():
         law = coefficient[rows], exponent[rows]
         a, k, c, r = (v[rows] for v in (darcy, transfer, bulk, rejection))
@@ -201,15 +225,17 @@ def power_rows(pressure, permeability, transfer, bulk, b, exponent, rejection, r
     return flux
 
 
-# --- measured points -----------------------------------------------------------------------------------------------
+# --- measured points ----------------------------------------------------------------------------------------
 
 
-def _end(bulk, highest, rejection):
+def _end_one(bulk, highest, rejection) -> float:
     """The x at which the surface reaches the highest concentration measured; infinite where it never does."""
     share = (bulk / highest - (1.0 - rejection)) / rejection
-    if isinstance(share, float):
-        return -math.log(share) if share > 0.0 else math.inf
-    return -np.log(np.maximum(share, 0.0))
+    return -math.log(share) if share > 0.0 else math.inf
+
+
+def _end_rows(bulk, highest, rejection) -> np.ndarray:
+    return -np.log(np.maximum((bulk / highest - (1.0 - rejection)) / rejection, 0.0))
 
 
 def table_one(pressure, permeability, transfer, bulk, table: OsmoticTable, rejection, reflection) -> float:
@@ -221,7 +247,8 @@ def table_one(pressure, permeability, transfer, bulk, table: OsmoticTable, rejec
     factor, passed = permeability * reflection, 1.0 - rejection
     if passed > 0.0 and not table.steepens:
         one = [np.array([v]) for v in (pressure, permeability, transfer, bulk, rejection, reflection)]
-        return float(table_rows(*one[:4], table, *one[4:])[0])
+        with np.errstate(all="ignore"):
+            return float(table_rows(*one[:4], table, *one[4:])[0])
 
     def terms(c):
         h, h1, h2 = table.terms_one(c)
@@ -232,12 +259,13 @@ def table_one(pressure, permeability, transfer, bulk, table: OsmoticTable, rejec
 
     if terms(bulk)[0] >= darcy:
         return 0.0
-    limit, end = darcy / transfer, _end(bulk, table.highest, rejection)
+    limit, end = darcy / transfer, _end_one(bulk, table.highest, rejection)
     if end < limit and transfer * end + terms(table.highest)[0] < darcy:
         return math.nan
     top = min(limit, end)
     x, _ = start_one(terms, bulk / table.about(darcy / factor), limit, transfer, bulk, rejection)
-    return solve_one(terms, darcy, transfer, bulk, rejection, min(x, top), top * (1.0 + 1e-9), TABLE_LAST_STEP)
+    high = top * (1.0 + 1e-9)
+    return solve_one(terms, darcy, transfer, bulk, rejection, min(x, top), high, TABLE_LAST_STEP)
 
 
 def _table_terms(table: OsmoticTable):
@@ -251,26 +279,28 @@ def _table_terms(table: OsmoticTable):
     return terms
 
 
-def table_rows(pressure, permeability, transfer, bulk, table: OsmoticTable, rejection, reflection) -> np.ndarray:
+def table_rows(
+    pressure, permeability, transfer, bulk, table: OsmoticTable, rejection, reflection
+) -> np.ndarray:
     """table_one for arrays of one size."""
     darcy, factor, passed = permeability * pressure, permeability * reflection, 1.0 - rejection
     plain = without_osmosis(bulk, permeability, rejection, reflection)
     flux = np.where(plain, darcy, np.nan)
     terms = _table_terms(table)
-    open_rows = ~plain & (transfer > 0.0) & (bulk <= table.highest)
-    simple = open_rows & ((passed == 0.0) | table.steepens)
+    sound = ~plain & (transfer > 0.0) & (bulk <= table.highest)
+    simple = sound & ((passed == 0.0) | table.steepens)
     start = terms(bulk, factor, passed)[0]
     flux[simple & (start >= darcy)] = 0.0
-    limit, end = darcy / transfer, _end(bulk, table.highest, rejection)
-    inside = (end >= limit) | (transfer * end + terms(np.full_like(bulk, table.highest), factor, passed)[0] >= darcy)
-    rows = simple & (start < darcy) & inside
+    limit, end = darcy / transfer, _end_rows(bulk, table.highest, rejection)
+    taken = terms(np.full_like(bulk, table.highest), factor, passed)[0]
+    rows = simple & (start < darcy) & ((end >= limit) | (transfer * end + taken >= darcy))
     if rows.any():
         law, top = (factor[rows], passed[rows]), np.minimum(limit, end)[rows]
         a, k, c, r = (v[rows] for v in (darcy, transfer, bulk, rejection))
         x, _ = start_rows(terms, law, c / table.about(a / law[0]), a / k, k, c, r)
-        flux[rows] = solve_rows(terms, law, a, k, c, r, np.minimum(x, top), np.zeros(len(x)), top * (1.0 + 1e-9),
-                                TABLE_LAST_STEP)
-    careful = np.flatnonzero(open_rows & ~simple)
+        high = top * (1.0 + 1e-9)
+        flux[rows] = solve_rows(terms, law, a, k, c, r, np.minimum(x, top), 0.0 * x, high, TABLE_LAST_STEP)
+    careful = np.flatnonzero(sound & ~simple)
     for first in range(0, len(careful), SCAN_ROWS):
         part = careful[first:first + SCAN_ROWS]
         law, row = (factor[part], passed[part]), tuple(v[part] for v in (darcy, transfer, bulk, rejection))
@@ -279,17 +309,16 @@ def table_rows(pressure, permeability, transfer, bulk, table: OsmoticTable, reje
 
 
 def _table_brackets(table, law, darcy, transfer, bulk, rejection):
-    """Bracket of the root and number of solutions, by a scan from no flux to L_p Δp or to the end of the table."""
-    limit, end = darcy / transfer, _end(bulk, table.highest, rejection)
+    """Bracket of the root and number of solutions, by a scan from no flux to L_p Δp or to the table's end."""
+    limit, end = darcy / transfer, _end_rows(bulk, table.highest, rejection)
     last = np.minimum(limit, end)
     factor, passed = (part[:, None] for part in law)
     b, r = bulk[:, None], rejection[:, None]
-    highest = np.minimum(b / (r * np.exp(-last[:, None]) + passed), table.highest)
-    c = b * np.exp(np.log(highest / b) * np.linspace(0.0, 1.0, SCAN))
+    most = np.minimum(b / (r * np.exp(-last[:, None]) + passed), table.highest)
+    c = b * np.exp(np.log(most / b) * np.linspace(0.0, 1.0, SCAN))
     nodes = np.minimum(-np.log(np.maximum((b / c - passed) / r, 1e-300)), last[:, None])
     nodes[:, 0], nodes[:, -1] = 0.0, last
-    taken = _table_terms(table)(c, factor, passed)[0]
-    excess = transfer[:, None] * nodes + taken - darcy[:, None]
+    excess = transfer[:, None] * nodes + _table_terms(table)(c, factor, passed)[0] - darcy[:, None]
     # Where the scan ends at k x = L_p Δp, the osmotic pressure is what is left: never below 0.
     excess[:, -1] = np.where(end < limit, excess[:, -1], 0.0)
     return single_bracket(nodes, excess)
@@ -300,8 +329,9 @@ def several_by_table(
     concentration, osmotic_pressure, intrinsic_rejection, reflection_coefficient,
 ) -> bool:
     """Whether several fluxes solve the equation within the table, for the reason of a refusal."""
-    law = np.array([permeability * reflection_coefficient]), np.array([1.0 - intrinsic_rejection])
-    row = permeability * transmembrane_pressure, mass_transfer_coefficient, bulk_concentration, intrinsic_rejection
     table = OsmoticTable.of(concentration, osmotic_pressure)
+    law = np.array([permeability * reflection_coefficient]), np.array([1.0 - intrinsic_rejection])
+    darcy = permeability * transmembrane_pressure
+    row = (np.array([v]) for v in (darcy, mass_transfer_coefficient, bulk_concentration, intrinsic_rejection))
     with np.errstate(all="ignore"):
-        return bool(_table_brackets(table, law, *(np.array([v]) for v in row))[2][0] > 1)
+        return bool(_table_brackets(table, law, *row)[2][0] > 1)

@@ -1,12 +1,13 @@
 """The osmotic-pressure model of the flux, solved: the J for which J + H(C_w) = L_p Δp.
 
-H = L_p σ [π(C_w) − π(C_p)] is the flux that the osmotic pressure takes away; the film gives C_w = C_b/(R e^(−x) + 1 − R),
-x = J/k, and C_p = (1 − R) C_w. A law of osmotic pressure is a function `terms` of C_w that gives H and its first and
-second derivative with respect to ln C_w. Everything is of the order of L_p Δp or below wherever it is evaluated: the search
-starts at the surface concentration whose osmotic pressure alone meets Δp, so that nothing overflows however large L_p Δp/k.
+H = L_p σ [π(C_w) − π(C_p)] is the flux that the osmotic pressure takes away; the film gives
+C_w = C_b/(R e^(−x) + 1 − R), x = J/k, and C_p = (1 − R) C_w. A law of osmotic pressure is a function `terms` of
+C_w that gives H and its first and second derivative with respect to ln C_w. The search starts at the surface
+concentration whose osmotic pressure alone meets Δp: H is of the order of L_p Δp wherever it is evaluated, and
+nothing overflows, however large L_p Δp/k.
 
-Halley's steps, kept in a bracket; from the start used here two to five are enough, because exponentials are what Halley's
-step solves best. `solve_one` is for one plain float, `solve_rows` for arrays; both do the same operations in the same order.
+Halley's steps, kept in a bracket; exponentials are what they solve best, and from this start two to five are
+enough. `solve_one` is for one plain float, `solve_rows` for arrays; both do the same operations in the same order.
 """
 
 from __future__ import annotations
@@ -20,26 +21,31 @@ import numpy as np
 LAST_STEP = 1e-6
 #: The same for a halving of the bracket, which leaves an error as large as itself.
 ROUNDING = 4e-16
-#: Steps before bisection is mixed in, and the most there are.
+#: Steps before halvings are mixed in, and the most there are.
 FREE_STEPS, MOST_STEPS = 9, 200
-#: The bracket's upper end above the start: with second coefficients below 0 the start may lie below the root, by
+#: The bracket's upper end above the start. With a second coefficient below 0 the start may lie below the root, by
 #: ln(1/(1 − √3/2)) = 2.01 at most.
 MARGIN = 2.1
-#: Lowest C_b over C_w: e^(−J/k) stays an ordinary number.
+#: Lowest C_b over C_w, so that e^(−J/k) stays an ordinary number.
 LEAST = 1e-307
 #: Rows solved at a time: the arrays stay in the processor's cache.
 ROWS = 4096
 
 
-def start_one(terms: Callable, rise: float, limit: float, transfer: float, bulk: float, rejection: float):
-    """First x and upper end of the bracket; `rise` is C_b over the C_w that alone takes all the flux, `limit` L_p Δp/k."""
+def start_one(
+    terms: Callable, rise: float, limit: float, transfer: float, bulk: float, rejection: float
+) -> tuple[float, float]:
+    """First x and upper end of the bracket.
+
+    `rise` is C_b over the C_w whose osmotic pressure alone takes all the flux, `limit` is L_p Δp/k.
+    """
     passed = 1.0 - rejection
     top = limit * (1.0 + 1e-9)
     rise = max(rise, LEAST)
     if rise > passed:
         x = max(-math.log((rise - passed) / rejection), 0.0)
         return min(x, limit), min(x + MARGIN, top)
-    # C_w rises to C_b/(1 − R) at most, which leaves some flux: beyond the bend of C_w(x), or where its end leads to.
+    # C_w cannot exceed C_b/(1 − R), which leaves some flux: start at the bend of C_w(x), or where that end leads to.
     plateau = terms(bulk / passed)[0]
     return min(limit, max(limit - plateau / transfer, math.log(rejection / passed), 0.0)), top
 
@@ -48,7 +54,7 @@ def solve_one(
     terms: Callable, darcy: float, transfer: float, bulk: float, rejection: float, x: float, high: float,
     last_step: float = LAST_STEP,
 ) -> float:
-    """Flux of one row; `darcy` is L_p Δp, above H at no flux."""
+    """Flux of one row; `darcy` is L_p Δp, which H at no flux does not reach."""
     passed, low = 1.0 - rejection, 0.0
     for step in range(MOST_STEPS):
         decay = rejection * math.exp(-x)
@@ -74,7 +80,7 @@ def solve_one(
 
 
 def start_rows(terms: Callable, law: tuple, rise, limit, transfer, bulk, rejection):
-    """start_one for arrays."""
+    """start_one for arrays; `law` holds the arrays that `terms` takes after C_w."""
     passed = 1.0 - rejection
     top = limit * (1.0 + 1e-9)
     rise = np.maximum(rise, LEAST)
@@ -93,12 +99,13 @@ def start_rows(terms: Callable, law: tuple, rise, limit, transfer, bulk, rejecti
 def solve_rows(
     terms: Callable, law: tuple, darcy, transfer, bulk, rejection, x, low, high, last_step: float = LAST_STEP
 ) -> np.ndarray:
-    """solve_one for arrays; `law` holds the arrays that `terms` takes after C_w, and `low` may lie above 0."""
+    """solve_one for arrays; `low` may lie above 0."""
     flux = np.full(len(x), np.nan)
     for first in range(0, len(x), ROWS):
         part = slice(first, first + ROWS)
-        _solve_piece(terms, tuple(a[part] for a in law), *(a[part] for a in (darcy, transfer, bulk, rejection)),
-                     x[part], low[part].copy(), high[part].copy(), last_step, flux[part])
+        row = (a[part] for a in (darcy, transfer, bulk, rejection, x))
+        _solve_piece(terms, tuple(a[part] for a in law), *row, low[part].copy(), high[part].copy(), last_step,
+                     flux[part])
     return flux
 
 
@@ -128,8 +135,8 @@ def _solve_piece(terms, law, darcy, transfer, bulk, rejection, x, low, high, las
         done = np.abs(new - x) <= small * np.minimum(x, 1.0)
         x = new
         if done.any():
-            moving = ~done
             flux[rows[done]] = np.minimum(transfer[done] * x[done], darcy[done])
+            moving = ~done
             darcy, transfer, bulk, rejection, passed, x, low, high, rows = (
                 a[moving] for a in (darcy, transfer, bulk, rejection, passed, x, low, high, rows))
             law = tuple(a[moving] for a in law)
@@ -137,21 +144,21 @@ def _solve_piece(terms, law, darcy, transfer, bulk, rejection, x, low, high, las
                 return
 
 
-def single_bracket(nodes: np.ndarray, excess: np.ndarray):
+def single_bracket(nodes: np.ndarray, excess: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
     """Where the one root of each row lies, and how many solutions there are.
 
     Parameters
     ----------
     nodes : array, rows × points
-        Rising x from 0, such that the excess is monotone between neighbours (or the points are dense).
+        Rising x from 0, between which the excess is monotone (or which are dense).
     excess : array of that shape
         k x + H − L_p Δp.
 
     Returns
     -------
     tuple of arrays
-        Lower and upper end of the first interval with a change of sign, and the number of solutions; no flux is one where the
-        osmotic pressure at no flux is not overcome.
+        The ends of the first interval in which the sign changes, and the number of solutions. No flux is one of
+        them where the osmotic pressure at no flux is not overcome.
     """
     above = excess >= 0.0
     change = above[:, 1:] != above[:, :-1]

@@ -118,9 +118,8 @@ def _backwards(y: float, step: float, stages: int, rejection: float, limit: floa
     """y from the feed's to the last one's, for the last stage's step; None once it goes beyond `limit`."""
     lost = (1.0 - rejection) / rejection
     found = [y + step, y]
-    g_next, after_next, after = 1.0 / y, 0.0, 0.0  # g_(i+1), W_(i+2), and W_(i+1) below
     passed = -math.expm1(-step)
-    after = passed * g_next / rejection
+    g_next, after_next, after = 1.0 / y, 0.0, passed / (y * rejection)  # g_(i+1), W_(i+2), W_(i+1)
     for _ in range(stages - 1):
         y = found[0]
         if y > limit:

@@ -1,7 +1,7 @@
 """Osmotic pressure from measured points: monotone cubic interpolation through them and the origin.
 
-Fritsch & Carlson's monotone piecewise cubics with the weighted harmonic mean of Fritsch & Butland for the slopes: no overshoot
-between points, hence no osmotic pressure that falls where the points do not.
+Piecewise cubics whose slope at a point is the weighted harmonic mean of its neighbours' (Fritsch & Butland): no
+overshoot between points, hence no osmotic pressure that falls where the points do not.
 """
 
 from __future__ import annotations
@@ -15,7 +15,7 @@ from ..errors import NoResult, NotAvailable
 
 
 class OsmoticTable:
-    """π(c) with its derivatives, for floats and for arrays, from the origin to the highest concentration measured."""
+    """π(c) and its derivatives, for floats and for arrays, from the origin to the highest concentration."""
 
     def __init__(self, concentration: np.ndarray, pressure: np.ndarray):
         self.knots, self.pressures = concentration, pressure
@@ -27,13 +27,14 @@ class OsmoticTable:
         third = (slopes[:-1] + slopes[1:] - 2.0 * mean) / width**2
         #: π = p + t (a + t (b + t c)) from the knot on the left, t = c − knot
         self.pieces = np.column_stack([pressure[:-1], slopes[:-1], second, third])
-        self._knots, self._pressures, self._pieces = concentration.tolist(), pressure.tolist(), self.pieces.tolist()
-        #: whether c·π′ nowhere falls: then π(C_w) − π(C_p) rises with C_w for every rejection
+        self._knots, self._pressures = concentration.tolist(), pressure.tolist()
+        self._pieces = self.pieces.tolist()
+        #: whether c π′ nowhere falls: then π(C_w) − π(C_p) rises with C_w for every rejection
         self.steepens = self._steepens()
 
     @staticmethod
     def of(concentration: np.ndarray, pressure: np.ndarray) -> OsmoticTable:
-        """The table of these points in any order, the origin added; the last ones are kept, as a spreadsheet asks cell by cell.
+        """The table of these points in any order, the origin added; the last ones are kept for the next cell.
 
         Raises
         ------
@@ -48,8 +49,8 @@ class OsmoticTable:
         # d(c π′)/dc = π′ + c π″ is a parabola in t on each piece: its ends and its vertex decide.
         left, (_, a, b, c) = self.knots[:-1], self.pieces.T
         width = np.diff(self.knots)
-        level, rise, bend = a + 2 * b * left, 4 * b + 6 * c * left, 9 * c
-        vertex = np.clip(-rise / np.where(bend == 0.0, 1.0, 2 * bend), 0.0, width)
+        level, rise, bend = a + 2.0 * b * left, 4.0 * b + 6.0 * c * left, 9.0 * c
+        vertex = np.clip(-rise / np.where(bend == 0.0, 1.0, 2.0 * bend), 0.0, width)
         lowest = min(float((level + t * (rise + t * bend)).min()) for t in (0.0 * width, vertex, width))
         return lowest >= -1e-12 * float(np.abs(level).max())
 
@@ -59,26 +60,27 @@ class OsmoticTable:
         p, first, second, third = self._pieces[i]
         t = c - self._knots[i]
         slope = first + t * (2.0 * second + t * 3.0 * third)
-        return p + t * (first + t * (second + t * third)), c * slope, c * (slope + c * (2.0 * second + 6.0 * t * third))
+        bend = 2.0 * second + 6.0 * t * third
+        return p + t * (first + t * (second + t * third)), c * slope, c * (slope + c * bend)
 
     def terms(self, c: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
         """terms_one for arrays."""
         i = np.minimum(np.searchsorted(self.knots, c, side="right"), len(self.pieces)) - 1
-        p, first, second, third = self.pieces[i].T
+        p, first, second, third = (self.pieces[:, n][i] for n in range(4))
         t = c - self.knots[i]
         slope = first + t * (2.0 * second + t * 3.0 * third)
-        return p + t * (first + t * (second + t * third)), c * slope, c * (slope + c * (2.0 * second + 6.0 * t * third))
+        bend = 2.0 * second + 6.0 * t * third
+        return p + t * (first + t * (second + t * third)), c * slope, c * (slope + c * bend)
 
     def about(self, pressure):
         """About the concentration of an osmotic pressure, by straight lines; the highest beyond the table."""
-        if isinstance(pressure, float):
-            right = bisect_right(self._pressures, pressure)
-            if right == len(self._pressures):
-                return self.highest
-            left = right - 1
-            share = (pressure - self._pressures[left]) / (self._pressures[right] - self._pressures[left])
-            return self._knots[left] + share * (self._knots[right] - self._knots[left])
-        return np.interp(pressure, self.pressures, self.knots)
+        if not isinstance(pressure, float):
+            return np.interp(pressure, self.pressures, self.knots)
+        right = bisect_right(self._pressures, pressure)
+        if right == len(self._pressures):
+            return self.highest
+        (low, high), (start, end) = self._pressures[right - 1:right + 1], self._knots[right - 1:right + 1]
+        return start + (pressure - low) / (high - low) * (end - start)
 
 
 def _knot_slopes(x: np.ndarray, y: np.ndarray) -> np.ndarray:
@@ -113,6 +115,6 @@ def _prepared(concentration: bytes, pressure: bytes) -> OsmoticTable:
         raise NotAvailable("the osmotic table needs a point above 0 g/L")
     c, p = np.concatenate(([0.0], c)), np.concatenate(([0.0], p))
     if (falls := np.flatnonzero(np.diff(p) < 0)).size:
-        i = falls[0]
-        raise NoResult(f"the osmotic pressures fall between {c[i]:.6g} and {c[i + 1]:.6g} g/L; they must rise with concentration")
+        start, end = c[falls[0]:falls[0] + 2]
+        raise NoResult(f"the osmotic pressures fall from {start:.6g} to {end:.6g} g/L; they must rise")
     return OsmoticTable(c, p)
