@@ -8,7 +8,9 @@ from pathlib import Path
 
 from openpyxl import Workbook
 from openpyxl.chart import ScatterChart, Series
+from openpyxl.chart.axis import ChartLines
 from openpyxl.chart.shapes import GraphicalProperties
+from openpyxl.drawing.line import LineProperties
 from openpyxl.styles import Alignment, Font
 from openpyxl.utils import get_column_letter
 from openpyxl.workbook.defined_name import DefinedName
@@ -22,11 +24,11 @@ WIDTHS = {LABEL: 44, SYMBOL: 11, VALUE: 16, UNIT: 17, REMARK: 62}
 class Page:
     """One sheet, filled from the top."""
 
-    def __init__(self, workbook: Workbook, title: str, heading: str, purpose: str):
+    def __init__(self, workbook: Workbook, title: str, heading: str, purpose: str, widths: dict[str, float] | None = None):
         self.sheet: Worksheet = workbook.create_sheet(title)
         self.workbook = workbook
         self.title = title
-        for column, width in WIDTHS.items():
+        for column, width in {**WIDTHS, **(widths or {})}.items():
             self.sheet.column_dimensions[column].width = width
         self.sheet["A1"] = heading
         self.sheet["A1"].style = "Title"
@@ -35,7 +37,7 @@ class Page:
         self.sheet.sheet_view.showGridLines = False
         self.row = 4
         page = self.sheet.page_setup
-        page.orientation, page.paperSize, page.fitToWidth, page.fitToHeight = "landscape", 9, 1, 0
+        page.orientation, page.paperSize, page.fitToWidth, page.fitToHeight = "landscape", 9, 1, 1
         self.sheet.sheet_properties.pageSetUpPr.fitToPage = True
 
     def section(self, text: str) -> None:
@@ -53,6 +55,7 @@ class Page:
         for column, text in ((LABEL, label), (SYMBOL, symbol), (UNIT, unit), (REMARK, remark)):
             self.sheet[f"{column}{row}"] = text
         self.sheet[f"{SYMBOL}{row}"].font = Font(italic=True)
+        self.sheet[f"{UNIT}{row}"].alignment = Alignment(horizontal="left", indent=1)
         self.sheet[f"{REMARK}{row}"].style = "Explanatory Text"
         cell = self.sheet[f"{VALUE}{row}"]
         cell.value, cell.style, cell.number_format = value, style, number_format
@@ -119,6 +122,7 @@ def scatter(page: Page, anchor: str, title: str, x_title: str, y_title: str, siz
     chart.legend.position = "b"
     chart.x_axis.number_format = chart.y_axis.number_format = "General"
     chart.x_axis.majorGridlines = None
+    chart.y_axis.majorGridlines = ChartLines(spPr=GraphicalProperties(ln=LineProperties(solidFill="D9D9D9")))
     page.sheet.add_chart(chart, anchor)
     return chart
 

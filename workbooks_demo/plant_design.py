@@ -12,8 +12,10 @@ from pathlib import Path
 from openpyxl import Workbook
 from openpyxl.chart import BarChart, Reference
 from openpyxl.formatting.rule import FormulaRule
-from openpyxl.styles import PatternFill
+from openpyxl.styles import Alignment, PatternFill
 from openpyxl.worksheet.datavalidation import DataValidation
+
+from uffuncs.cell import call
 
 from .layout import Page, add_series, column_range, save, scatter
 
@@ -143,12 +145,12 @@ def trial(workbook: Workbook) -> None:
                     "0.00E+00")
     page.section("Readings")
     top = page.row + 2
-    page.header(["Protein in the bulk", "", "Flux", "Fit"], ["g/L", "", "L/(m²·h)", "L/(m²·h)"])
+    page.header(["Reading", "Protein", "Flux", "Fit"], ["", "g/L", "L/(m²·h)", "L/(m²·h)"])
     last = top + len(TRIAL) - 1
-    concentrations, fluxes = column_range(top, last, 1), column_range(top, last, 3)
+    concentrations, fluxes = column_range(top, last, 2), column_range(top, last, 3)
     for row, (concentration, flux) in enumerate(TRIAL, top):
-        page.cells(row, [concentration, None, flux, f"=UF_FLUX_LIMITING(trial_k,trial_gel,A{row})"],
-                   ["Input", "Normal", "Input", "Calculation"], ["0", "General", "0.0", "0.0"])
+        page.cells(row, [f"Reading {row - top + 1}", concentration, flux, f"=UF_FLUX_LIMITING(trial_k,trial_gel,B{row})"],
+                   ["Normal", "Input", "Input", "Calculation"], ["General", "0", "0.0", "0.0"])
     page.row = last + 2
     page.section("Gel-model fit")
     fit = f"UF_GEL_FIT({concentrations},{fluxes})"
@@ -161,9 +163,9 @@ def trial(workbook: Workbook) -> None:
             ("95 % interval of C_g, lower end", "", "g/L", "", "0.0"),
             ("95 % interval of C_g, upper end", "", "g/L", "", "0.0")), 1):
         page.calculated(label, symbol, f"=INDEX({fit},1,{n})", unit, "least squares of J on ln C" if n == 1 else "", name, fmt)
-    chart = scatter(page, "G4", "Trial: flux against concentration", "Protein in the bulk, g/L", "Flux, L/(m²·h)")
+    chart = scatter(page, f"A{page.row + 1}", "Trial: flux against concentration", "Protein in the bulk, g/L", "Flux, L/(m²·h)")
     sheet = page.sheet
-    x = Reference(sheet, min_col=1, min_row=top, max_row=last)
+    x = Reference(sheet, min_col=2, min_row=top, max_row=last)
     add_series(chart, x, Reference(sheet, min_col=3, min_row=top, max_row=last), "measured", "C55A11", marker=True)
     add_series(chart, x, Reference(sheet, min_col=4, min_row=top, max_row=last), "k ln(C_g/C_b)", "2E5597")
     chart.x_axis.scaling.logBase = 10
@@ -236,12 +238,10 @@ def polarization(workbook: Workbook) -> None:
 
 def pressure_curve(workbook: Workbook) -> None:
     page = Page(workbook, "Flux and pressure", "Flux against pressure",
-                "Pressure-controlled and limiting branch at the operating concentration.")
+                "Pressure-controlled and limiting branch at the operating concentration.",
+                {"A": 24, "B": 14, "C": 14, "D": 14, "E": 17, "F": 14, "G": 56})
     page.header(["Transmembrane pressure", "Darcy", "Limiting flux", "Gel model", "Osmotic model", "Surface", "Branch (gel model)"],
                 ["bar", "L/(m²·h)", "L/(m²·h)", "L/(m²·h)", "L/(m²·h)", "g/L", ""])
-    page.sheet.column_dimensions["E"].width = 17
-    page.sheet.column_dimensions["F"].width = 14
-    page.sheet.column_dimensions["G"].width = 46
     first, last = page.row, page.row + len(PRESSURES) - 1
     gel = "permeate_viscosity,membrane_resistance,transfer_coefficient,trial_gel,mean_concentration,fouling_resistance"
     for row, pressure in enumerate(PRESSURES, first):
@@ -255,7 +255,7 @@ def pressure_curve(workbook: Workbook) -> None:
             f"=mean_concentration*UF_POLARIZATION_MODULUS(E{row},transfer_coefficient,intrinsic_rejection)",
             f'=UF_WHY("UF_FLUX_GEL",A{row},{gel})',
         ], ["Input", *["Calculation"] * 6], ["0.00", *["0.0"] * 5, "General"])
-    chart = scatter(page, f"A{last + 2}", "Flux against transmembrane pressure", "Transmembrane pressure, bar", "Flux, L/(m²·h)", (22, 11))
+    chart = scatter(page, f"A{last + 3}", "Flux against transmembrane pressure", "Transmembrane pressure, bar", "Flux, L/(m²·h)", (22, 11))
     x = Reference(page.sheet, min_col=1, min_row=first, max_row=last)
     for column, title, color, dashed in ((2, "pressure-controlled: Darcy", "7F7F7F", True), (3, "limiting flux", "C55A11", True),
                                          (4, "gel model", "2E5597", False), (5, "osmotic model", "548235", False)):
@@ -266,11 +266,10 @@ def pressure_curve(workbook: Workbook) -> None:
 
 def concentration_curve(workbook: Workbook) -> None:
     page = Page(workbook, "Flux and concentration", "Flux against concentration",
-                "The osmotic model with the mass-transfer coefficient of each concentration; the cascade reads this table.")
+                "The osmotic model with the mass-transfer coefficient of each concentration; the cascade reads this table.",
+                {"A": 24, "B": 14, "C": 14, "D": 17, "E": 14, "F": 24})
     page.header(["Protein in the bulk", "Viscosity", "k", "Osmotic model", "Surface", "Gel model of the trial"],
                 ["g/L", "mPa·s", "L/(m²·h)", "L/(m²·h)", "g/L", "L/(m²·h)"])
-    page.sheet.column_dimensions["E"].width = 14
-    page.sheet.column_dimensions["F"].width = 22
     first, last = page.row, page.row + len(CONCENTRATIONS) - 1
     for row, concentration in enumerate(CONCENTRATIONS, first):
         page.cells(row, [
@@ -284,7 +283,7 @@ def concentration_curve(workbook: Workbook) -> None:
         ], ["Input", *["Calculation"] * 5], ["0", "0.000", "0.0", "0.0", "0.0", "0.0"])
     page.name("table_concentration", f"$A${first}:$A${last}")
     page.name("table_flux", f"$D${first}:$D${last}")
-    chart = scatter(page, f"A{last + 2}", "Flux against concentration", "Protein in the bulk, g/L", "Flux, L/(m²·h)", (22, 11))
+    chart = scatter(page, f"A{last + 3}", "Flux against concentration", "Protein in the bulk, g/L", "Flux, L/(m²·h)", (22, 11))
     x = Reference(page.sheet, min_col=1, min_row=first, max_row=last)
     add_series(chart, x, Reference(page.sheet, min_col=4, min_row=first, max_row=last), "osmotic model, design", "2E5597")
     add_series(chart, x, Reference(page.sheet, min_col=6, min_row=first, max_row=last), "gel model of the trial", "C55A11", dashed=True)
@@ -294,7 +293,8 @@ def concentration_curve(workbook: Workbook) -> None:
 
 def cascade(workbook: Workbook) -> None:
     page = Page(workbook, "Cascade", "Stage cascade, area and modules",
-                "Feed-and-bleed stages in series; the intermediate concentrations give the least total area.")
+                "Feed-and-bleed stages in series; the intermediate concentrations give the least total area.",
+                {"A": 34, "B": 14, "C": 14, "D": 16, "E": 14, "F": 14, "G": 14})
     page.section("Feed")
     page.calculated("Availability", "a", "=UF_AVAILABILITY(cleaning_interval,cleaning_duration)", "-", "share of the day in service",
                     "availability", "0.000")
@@ -303,8 +303,6 @@ def cascade(workbook: Workbook) -> None:
     top = page.row + 2
     page.header(["Stage", "Protein", "Flux", "Permeate", "Retentate", "Area", "Yield"],
                 ["", "g/L", "L/(m²·h)", "m³/h", "m³/h", "m²", "-"])
-    page.sheet.column_dimensions["F"].width = 12
-    page.sheet.column_dimensions["G"].width = 12
     last = top + STAGES
     for row in range(top, last + 1):
         label = "Total" if row == last else f"Stage {row - top + 1}"
@@ -381,7 +379,7 @@ def energy_and_cost(workbook: Workbook) -> None:
 
 def questions(workbook: Workbook) -> None:
     page = Page(workbook, "Questions", "Questions a reviewer asks", "Live cells instead of Goal Seek, a spread instead of a bare number, "
-                "claims against calculated values.")
+                "claims against calculated values.", {"C": 28})
     osmotic = "permeability,transfer_coefficient,mean_concentration,osmotic_1,osmotic_2,osmotic_3,intrinsic_rejection"
     page.section("Which pressure gives the flux wanted?")
     page.input("Flux wanted", "J", "60 gfd", "L/(m²·h)", "at the mean concentration", "wanted_flux")
@@ -418,10 +416,12 @@ def key_results(page: Page) -> None:
     """The sheet that `uffuncs demo` prints."""
     page.sheet.column_dimensions["B"].width = 16
     page.sheet.column_dimensions["C"].width = 18
+    page.sheet.column_dimensions["E"].width = 30
     page.row = SUMMARY.first_row - 1
     for column, text in (("A", "Result"), ("B", "Value"), ("C", "Unit")):
         page.sheet[f"{column}{page.row}"] = text
         page.sheet[f"{column}{page.row}"].style = "Headline 3"
+        page.sheet[f"{column}{page.row}"].alignment = Alignment(horizontal={"A": "left", "B": "right", "C": "left"}[column], indent=int(column == "C"))
     rows = (
         ("Feed flow in service", "=feed_flow", "m³/h", "#,##0.0"),
         ("Mass-transfer coefficient", "=transfer_coefficient", "L/(m²·h)", "0.0"),
@@ -441,6 +441,7 @@ def key_results(page: Page) -> None:
     for row, (label, formula, unit, number_format) in enumerate(rows, SUMMARY.first_row):
         page.sheet[f"A{row}"], page.sheet[f"B{row}"], page.sheet[f"C{row}"] = label, formula, unit
         page.sheet[f"B{row}"].style, page.sheet[f"B{row}"].number_format = "Output", number_format
+        page.sheet[f"C{row}"].alignment = Alignment(horizontal="left", indent=1)
 
 
 def notes(workbook: Workbook) -> None:
@@ -448,7 +449,7 @@ def notes(workbook: Workbook) -> None:
     page.section("Purpose")
     page.text("A worked design of an invented ultrafiltration plant, from design basis to area, modules, energy and cost. It shows how the "
               "UF_ functions are used together; copy the formulas, not the numbers.")
-    page.text("Cells: orange is an input, grey a calculation, bold grey a result, dark a check. Units stand in their own column; every "
+    page.text("Cells: an orange field is an input, orange figures a calculation, black figures in grey a result, a dark field a check. Units stand in their own column; every "
               "UF_ function takes and gives the unit shown. =UF_WHY(\"UF_FLUX_DARCY\",…) tells why a cell shows an error.")
     page.section("What is simplified")
     page.text("One operating pressure and one loss per module for all stages; the permeate is taken as water; the rejection is that of the "
@@ -461,10 +462,13 @@ def notes(workbook: Workbook) -> None:
     page.text("Never mix hypochlorite with acid cleaners: chlorine gas. Rinse fully between alkaline chlorine and acid steps.", "Warning Text")
     page.section("Sources")
     for name in ("UF_WATER_VISCOSITY", "UF_DIFFUSION_YOUNG", "UF_VISCOSITY_ROSS_MINTON", "UF_OSMOTIC_POLYNOMIAL", "UF_SHERWOOD_SPACER",
-                 "UF_PRESSURE_DROP_SPACER", "UF_FLUX_OSMOTIC", "UF_GEL_FIT", "UF_STAGES_TABLE", "UF_COST_TREATMENT"):
+                 "UF_PRESSURE_DROP_SPACER", "UF_FLUX_OSMOTIC", "UF_GEL_FIT", "UF_STAGES_TABLE", "UF_COST_TREATMENT", "UF_UNCERTAINTY"):
         page.sheet[f"A{page.row}"] = name
         page.sheet.merge_cells(f"B{page.row}:E{page.row}")
-        page.sheet[f"B{page.row}"] = f'=UF_SOURCE("{name}")'
+        cell = page.sheet[f"B{page.row}"]
+        cell.value, cell.alignment = f'=UF_SOURCE("{name}")', Alignment(wrap_text=True, vertical="top")
+        page.sheet[f"A{page.row}"].alignment = Alignment(vertical="top")
+        page.sheet.row_dimensions[page.row].height = 15 * (1 + len(call("UF_SOURCE", [name])) // 95)
         page.row += 1
 
 

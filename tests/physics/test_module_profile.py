@@ -13,12 +13,13 @@ from scipy.optimize import brentq
 
 from uffuncs.cell import call
 from uffuncs.errors import ErrorValue, NoResult
-from uffuncs.physics import _march
+from uffuncs.physics import _graetz, _march
 from uffuncs.physics.crossflow import hydraulic_diameter_spacer, reynolds, schmidt
 from uffuncs.physics.crossflow_pressure import pressure_drop_slit, pressure_drop_spacer, pressure_drop_tube
-from uffuncs.physics.crossflow_transfer import sherwood_graetz, transfer_slit, transfer_spacer, transfer_tube
-from uffuncs.physics.module_profile import (module_profile_fiber, module_profile_slit, module_profile_spacer,
-                                            module_profile_tube)
+from uffuncs.physics.crossflow_transfer import (sherwood_graetz, sherwood_turbulent, transfer_slit,
+                                                transfer_spacer, transfer_tube)
+from uffuncs.physics.module_profile import (_smooth_sherwood, module_profile_fiber, module_profile_slit,
+                                            module_profile_spacer, module_profile_tube)
 
 LMH_BAR = 1e-3 / 3600 / 1e5
 WHEY = (440.0, -0.17, 7.9e-3)  # Pa/(kg/m³)^n, of the order of a protein's
@@ -28,9 +29,10 @@ OSMOTIC = dict(first_coefficient=WHEY[0], second_coefficient=WHEY[1], third_coef
 PURE = dict(first_coefficient=0.0)
 
 TUBE = dict(tube_diameter=1e-3, channel_length=1.0, channel_count=1000, permeability=60 * LMH_BAR)
-SLIT = dict(channel_height=1e-3, channel_width=0.5, channel_length=1.0, channel_count=10, permeability=60 * LMH_BAR)
-SPACER = dict(channel_height=0.8e-3, channel_width=0.8, channel_length=0.9, spacer_voidage=0.9, filament_diameter=0.4e-3,
-              channel_count=10, permeability=30 * LMH_BAR)
+SLIT = dict(channel_height=1e-3, channel_width=0.5, channel_length=1.0, channel_count=10,
+            permeability=60 * LMH_BAR)
+SPACER = dict(channel_height=0.8e-3, channel_width=0.8, channel_length=0.9, spacer_voidage=0.9,
+              filament_diameter=0.4e-3, channel_count=10, permeability=30 * LMH_BAR)
 FIBER = dict(fiber_diameter=0.8e-3, fiber_length=1.0, fiber_count=3000, permeability=60 * LMH_BAR)
 MODULES = [
     (module_profile_tube, TUBE, 2 / 3600, math.pi * 1e-3 * 1000 * 1.0),
@@ -45,7 +47,7 @@ def run(profile, geometry, flow, **changes):
     return profile(**{"feed_flow": flow, **FEED, **geometry, **LIQUID, **OSMOTIC, **changes})
 
 
-# --- balances --------------------------------------------------------------------------------------------------------
+# --- balances -----------------------------------------------------------------------------------------------
 
 
 @pytest.mark.parametrize("profile, geometry, flow, area", MODULES, ids=ids)
@@ -62,9 +64,9 @@ def test_balances_of_water_and_solute(profile, geometry, flow, area, rejection):
 
 @pytest.mark.parametrize("rejection", [1.0, 0.8])
 def test_the_rows_carry_the_balances(rejection):
-    """The fluxes of the rows, summed independently by Simpson's rule, are what flow and solute lose, to 1e-9."""
-    x, u, p, c, flux, wall = (column[:-1] for column in run(module_profile_spacer, SPACER, 2 / 3600, points=401,
-                                                            intrinsic_rejection=rejection))
+    """The fluxes of the rows, summed by Simpson's rule, are what flow and solute lose, to 1e-9."""
+    columns = run(module_profile_spacer, SPACER, 2 / 3600, points=401, intrinsic_rejection=rejection)
+    x, u, p, c, flux, wall = (column[:-1] for column in columns)
     width, flow = 2 * 0.8 * 10, 2 / 3600 * u / u[0]
     assert width * simpson(flux, x=x) == pytest.approx(flow[0] - flow[-1], rel=1e-9)
     passed = width * simpson(flux * (1 - rejection) * wall, x=x)
@@ -85,19 +87,20 @@ def test_last_row_has_the_means(profile, geometry, flow, area):
     assert s[0] == 0.0
 
 
-# --- exact limits ----------------------------------------------------------------------------------------------------
+# --- exact limits -------------------------------------------------------------------------------------------
 
 
 def closed_form(flow, pressure, resistance, width, permeability, x):
-    """Laminar flow with a permeable wall and no osmotic pressure: p′ = −r Q, Q′ = −w L_p p, a linear system."""
+    """Laminar flow with a permeable wall, no osmotic pressure: p′ = −r Q, Q′ = −w L_p p, a linear system."""
     g = math.sqrt(resistance * width * permeability)
     return (flow * np.cosh(g * x) - pressure * g / resistance * np.sinh(g * x),
             pressure * np.cosh(g * x) - flow * resistance / g * np.sinh(g * x))
 
 
 @pytest.mark.parametrize("profile, geometry, size, resistance, width", [
-    (module_profile_tube, TUBE, 1000 * math.pi / 4 * 1e-6, 128e-3 / (math.pi * 1e-12 * 1000), 1000 * math.pi * 1e-3),
-    (module_profile_fiber, FIBER, 3000 * math.pi / 4 * 0.64e-6, 128e-3 / (math.pi * 0.8e-3**4 * 3000), 3000 * math.pi * 0.8e-3),
+    (module_profile_tube, TUBE, 1000 * math.pi / 4 * 1e-6, 128e-3 / (math.pi * 1e-12 * 1000), math.pi),
+    (module_profile_fiber, FIBER, 3000 * math.pi / 4 * 0.64e-6, 128e-3 / (math.pi * 0.8e-3**4 * 3000),
+     3000 * math.pi * 0.8e-3),
     (module_profile_slit, SLIT, 10 * 0.5e-3, 12e-3 / (1e-9 * 0.5 * 10), 10 * 2 * 0.5),
 ], ids=["tube", "fiber", "slit"])
 @pytest.mark.parametrize("changes", [PURE, {"feed_concentration": 0.0}, {"intrinsic_rejection": 0.0}])
@@ -118,7 +121,8 @@ def test_without_osmotic_pressure_the_closed_form(profile, geometry, size, resis
 DROPS = [
     (module_profile_tube, TUBE, lambda u: pressure_drop_tube(u, 1e-3, 1.0, 1e-3, 1000.0)),
     (module_profile_slit, SLIT, lambda u: pressure_drop_slit(u, 1e-3, 1.0, 1e-3, 1000.0)),
-    (module_profile_spacer, SPACER, lambda u: pressure_drop_spacer(u, 0.8e-3, 0.9, 0.4e-3, 0.9, 1e-3, 1000.0)),
+    (module_profile_spacer, SPACER,
+     lambda u: pressure_drop_spacer(u, 0.8e-3, 0.9, 0.4e-3, 0.9, 1e-3, 1000.0)),
     (module_profile_fiber, FIBER, lambda u: pressure_drop_tube(u, 0.8e-3, 1.0, 1e-3, 1000.0)),
 ]
 
@@ -149,8 +153,8 @@ def test_pressure_drop_in_every_regime(flow):
 ], ids=["tube", "slit", "spacer"])
 def test_the_local_coefficients_average_to_the_mean_one(profile, geometry, transfer):
     """With hardly any permeation, k = J/ln(C_w/C): its mean along the module is that of the whole length."""
-    columns = run(profile, {**geometry, "permeability": 1e-3 * LMH_BAR}, 5 / 3600, points=3001, feed_pressure=20e5,
-                  intrinsic_rejection=1.0)
+    columns = run(profile, {**geometry, "permeability": 1e-3 * LMH_BAR}, 5 / 3600, points=3001,
+                  feed_pressure=20e5, intrinsic_rejection=1.0)
     x, u, p, c, flux, wall = (column[1:-1] for column in columns)
     k = flux / np.log(wall / c)
     s = np.cbrt(x / x[-1])
@@ -159,7 +163,17 @@ def test_the_local_coefficients_average_to_the_mean_one(profile, geometry, trans
     assert mean == pytest.approx(transfer(columns[1][0]), rel=2e-4)
 
 
-# --- independent integration -----------------------------------------------------------------------------------------
+def test_the_local_coefficient_in_transition():
+    """Between the laminar value at the same place in a flow at Re 2100, and the turbulent one at Re 4000."""
+    local, place = _smooth_sherwood(_graetz.TUBE), 1.3e-3  # x D/(u d²) at Re 2900
+    low = _graetz.local(place * 2900 / 2100, _graetz.TUBE)
+    share = math.log(2900 / 2100) / math.log(4000 / 2100)
+    assert local(2900.0, 8000.0, place) == pytest.approx(low * (sherwood_turbulent(4000.0, 8000.0) / low) ** share)
+    assert local(2100.0, 8000.0, place) == pytest.approx(_graetz.local(place, _graetz.TUBE), rel=1e-14)
+    assert local(5000.0, 8000.0, place) == sherwood_turbulent(5000.0, 8000.0)
+
+
+# --- independent integration --------------------------------------------------------------------------------
 
 
 def film_flux(pressure, permeability, k, bulk, rejection):
@@ -193,10 +207,11 @@ def local_sherwood(channel):
 @pytest.mark.parametrize("case", ["spacer", "tube", "slit"])
 @pytest.mark.parametrize("rejection", [1.0, 0.99])
 def test_against_an_independent_integration(case, rejection):
-    """Another method (in x, with another solver of the flux), started a little inside the entrance of a laminar channel."""
+    """Another method (in x, with another solver of the flux), started a little inside a laminar entrance."""
     flow, start = 2 / 3600, 0.0
     if case == "spacer":
-        profile, geometry, width, area, length = module_profile_spacer, SPACER, 16.0, 10 * 0.8 * 0.8e-3 * 0.9, 0.9
+        profile, geometry, length = module_profile_spacer, SPACER, 0.9
+        width, area = 16.0, 10 * 0.8 * 0.8e-3 * 0.9
         diameter = hydraulic_diameter_spacer(0.8e-3, 0.9, 0.4e-3)
 
         def gradient(u):
@@ -206,8 +221,10 @@ def test_against_an_independent_integration(case, rejection):
             re = reynolds(u, diameter, 1000.0, 1e-3)
             return 0.065 * re**0.875 * schmidt(1e-3, 1000.0, 6e-11) ** 0.25 * 6e-11 / diameter
     else:
-        profile, geometry, length = {"tube": (module_profile_tube, TUBE, 1.0), "slit": (module_profile_slit, SLIT, 1.0)}[case]
-        width, area, diameter = {"tube": (math.pi, 1000 * math.pi / 4e6, 1e-3), "slit": (10.0, 5e-3, 2e-3)}[case]
+        profile, geometry, width, area, diameter = {
+            "tube": (module_profile_tube, TUBE, math.pi, 1000 * math.pi / 4e6, 1e-3),
+            "slit": (module_profile_slit, SLIT, 10.0, 5e-3, 2e-3)}[case]
+        length = 1.0
         sherwood = local_sherwood(case)
 
         def gradient(u):
@@ -221,14 +238,16 @@ def test_against_an_independent_integration(case, rejection):
     def slopes(x, y):
         water, solute, pressure, z = y
         u = water * flow / area
-        flux, wall = film_flux(pressure * 1e5, geometry["permeability"], coefficient(u, z), 10 * solute / water, rejection)
-        return [-width * flux / flow, -width * flux * (1 - rejection) * wall / (10 * flow), -gradient(u) / 1e5,
-                6e-11 / (u * diameter**2)]
+        bulk = 10 * solute / water
+        flux, wall = film_flux(pressure * 1e5, geometry["permeability"], coefficient(u, z), bulk,
+                               rejection)
+        return [-width * flux / flow, -width * flux * (1 - rejection) * wall / (10 * flow),
+                -gradient(u) / 1e5, 6e-11 / (u * diameter**2)]
 
     # Up to the start the water lost is at most that of the pressure alone, 1e-7 of it.
     u0 = flow / area
-    found = solve_ivp(slopes, (start, length), [1.0, 1.0, 2.8, 6e-11 * start / (u0 * diameter**2)], method="LSODA",
-                      rtol=1e-9, atol=1e-12, t_eval=[length])
+    found = solve_ivp(slopes, (start, length), [1.0, 1.0, 2.8, 6e-11 * start / (u0 * diameter**2)],
+                      method="LSODA", rtol=1e-9, atol=1e-12, t_eval=[length])
     water, solute, pressure, _ = found.y[:, -1]
     x, u, p, c, flux, wall = run(profile, geometry, flow, intrinsic_rejection=rejection)
     assert u[-2] == pytest.approx(u0 * water, rel=3e-7)
@@ -237,7 +256,7 @@ def test_against_an_independent_integration(case, rejection):
     assert flux[-1] == pytest.approx((1 - water) * flow / (width * length), rel=2e-6)
 
 
-# --- discretisation --------------------------------------------------------------------------------------------------
+# --- discretisation -----------------------------------------------------------------------------------------
 
 KINKED = dict(tube_diameter=12e-3, channel_length=3.0, channel_count=100, permeability=100 * LMH_BAR)
 CASES = [
@@ -263,7 +282,8 @@ def test_the_error_follows_the_tolerance(monkeypatch):
     for tolerance in (1e-3, 1e-6, 1e-9):
         monkeypatch.setattr(_march, "TOLERANCE", tolerance)
         monkeypatch.setattr(_march, "SMALL", tolerance / 100)
-        errors.append(np.abs(np.array(run(module_profile_spacer, SPACER, 2 / 3600))[1:, :-1] / exact[1:, :-1] - 1).max())
+        values = np.array(run(module_profile_spacer, SPACER, 2 / 3600))
+        errors.append(np.abs(values[1:, :-1] / exact[1:, :-1] - 1).max())
     assert errors[0] > 10 * errors[1] > 100 * errors[2]
     assert errors[2] < 1e-9
 
@@ -294,14 +314,14 @@ def test_how_often_the_flux_is_solved():
     assert calls < 500
 
 
-# --- trends ----------------------------------------------------------------------------------------------------------
+# --- trends -------------------------------------------------------------------------------------------------
 
 
 @pytest.mark.parametrize("profile, geometry, flow, area", MODULES, ids=ids)
 def test_shape_of_the_profiles(profile, geometry, flow, area):
     x, u, p, c, flux, wall = (column[:-1] for column in run(profile, geometry, flow, points=40))
-    assert np.all(np.diff(u) < 0) and np.all(np.diff(p) < 0) and np.all(np.diff(c) > 0) and np.all(np.diff(flux) < 0)
-    assert np.all(wall[1:] > c[1:])
+    assert all(np.all(np.diff(falling) < 0) for falling in (u, p, flux))
+    assert np.all(np.diff(c) > 0) and np.all(wall[1:] > c[1:])
     if profile is not module_profile_spacer:  # a smooth inlet has no concentration layer yet
         osmotic = WHEY[0] * 10 + WHEY[1] * 100 + WHEY[2] * 1000
         assert wall[0] == pytest.approx(10.0, rel=1e-6)
@@ -310,7 +330,7 @@ def test_shape_of_the_profiles(profile, geometry, flow, area):
 
 @settings(max_examples=25)
 @given(st.floats(0.5, 20), st.floats(0.05, 60), st.floats(1, 6), st.floats(5, 200), st.floats(0, 1))
-def test_any_feed_gives_a_balanced_profile_or_a_reason(flow, concentration, pressure, permeability, rejection):
+def test_any_feed_is_balanced_or_refused(flow, concentration, pressure, permeability, rejection):
     cells = [flow, concentration, pressure, 0.2, 0.8, 0.8, 0.9, 0.9, 0.4, 10, permeability, 6e-11, 1, 1000,
              4.4e-3, -1.7e-6, 7.9e-8, rejection, 5]
     block = call("UF_MODULE_PROFILE_SPACER", cells)
@@ -319,15 +339,17 @@ def test_any_feed_gives_a_balanced_profile_or_a_reason(flow, concentration, pres
         return
     rows = np.array(block)
     assert rows.shape == (6, 6)
-    assert flow == pytest.approx(flow * rows[4, 1] / rows[0, 1] + rows[5, 4] * 2 * 0.8 * 0.9 * 10 / 1000, rel=1e-9)
+    permeate = rows[5, 4] * 2 * 0.8 * 0.9 * 10 / 1000
+    assert flow == pytest.approx(flow * rows[4, 1] / rows[0, 1] + permeate, rel=1e-9)
 
 
-# --- refusals and words ----------------------------------------------------------------------------------------------
+# --- refusals and words -------------------------------------------------------------------------------------
 
 
 def test_refusals_with_their_place():
     with pytest.raises(NoResult, match="used up 0.[0-9]+ m from the inlet, before the outlet at 0.9 m"):
-        run(module_profile_spacer, {**SPACER, "permeability": 100 * LMH_BAR}, 2 / 3600, feed_concentration=0.0)
+        run(module_profile_spacer, {**SPACER, "permeability": 100 * LMH_BAR}, 2 / 3600,
+            feed_concentration=0.0)
     with pytest.raises(NoResult, match="pressure falls to the permeate pressure 0.[0-9]+ m from the inlet"):
         run(module_profile_spacer, SPACER, 25 / 3600, feed_pressure=1e5, feed_concentration=0.0)
     with pytest.raises(NoResult, match="feed pressure does not exceed"):
@@ -341,6 +363,26 @@ def test_refusals_with_their_place():
     with pytest.raises(NoResult, match="beyond all numbers"):
         run(module_profile_slit, {**SLIT, "channel_height": 0.02}, 2 / 3600, **PURE, second_coefficient=0.0,
             third_coefficient=0.0, diffusion_coefficient=1e-12)
+
+
+def test_a_flux_that_dies_out_is_not_followed_for_ever(monkeypatch):
+    monkeypatch.setattr(_march, "MOST_EVALUATIONS", 30)
+    with pytest.raises(NoResult, match="dies out long before the outlet"):
+        run(module_profile_spacer, SPACER, 5 / 3600)
+
+
+def test_an_osmotic_law_with_several_fluxes_is_refused():
+    with pytest.raises(NoResult, match="several fluxes, or none"):
+        run(module_profile_spacer, SPACER, 5 / 3600, first_coefficient=2000.0, second_coefficient=-30.0,
+            third_coefficient=0.0)
+
+
+def test_numbers_of_any_type():
+    plain = np.array(run(module_profile_tube, TUBE, 2 / 3600))
+    geometry = {k: np.float64(v) for k, v in TUBE.items()}
+    other = np.array(run(module_profile_tube, geometry, np.float64(2 / 3600),
+                         intrinsic_rejection=1, points=np.int64(20)))
+    assert np.allclose(plain, other, rtol=1e-13, atol=0)
 
 
 def test_words_at_the_worksheet(why):

@@ -87,7 +87,9 @@ def polynomial_one(pressure, permeability, transfer, bulk, b1, b2, b3, rejection
     if d3 > 0.0:
         most = min(most, math.cbrt(darcy / d3))
     x, high = start_one(terms, bulk / most, limit, transfer, bulk, rejection)
-    return solve_one(terms, darcy, transfer, bulk, rejection, x, high if rises else min(limit, FARTHEST))
+    if not rises:  # then the start says nothing of where the search must end
+        high = limit * (1.0 + 1e-9) if rejection < 1.0 else min(limit, FARTHEST)
+    return solve_one(terms, darcy, transfer, bulk, rejection, x, high)
 
 
 def polynomial_rows(pressure, permeability, transfer, bulk, b1, b2, b3, rejection, reflection) -> np.ndarray:

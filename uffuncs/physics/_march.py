@@ -22,8 +22,8 @@ from .osmotic_flux import flux_osmotic
 #: Relative tolerance of a step, the absolute one on values that are 1 at the inlet, and the longest step in
 #: s: a long one may step over the kinks at the Reynolds numbers where the laws change.
 TOLERANCE, SMALL, LONGEST = 1e-11, 1e-13, 0.125
-#: Evaluations after which it is given up: the usual module takes 150, one that is stiff because its flux dies out at
-#: once would take millions.
+#: Evaluations after which it is given up: the usual module takes 150, one that is stiff because its flux dies
+#: out at once would take millions.
 MOST_EVALUATIONS = 6000
 #: Share of the feed flow that counts as used up.
 USED_UP = 1e-6
@@ -100,8 +100,8 @@ class March:
         bulk = o.feed_concentration * solute / flow
         if o.osmotic:
             # Plain floats take its fast way, whatever numbers the caller gave.
-            flux = flux_osmotic(*map(float, (self.driving * pressure, o.permeability, k, bulk, *o.coefficients,
-                                             o.intrinsic_rejection, 1.0)))
+            flux = flux_osmotic(*map(float, (self.driving * pressure, o.permeability, k, bulk,
+                                             *o.coefficients, o.intrinsic_rejection, 1.0)))
             if flux != flux:
                 raise NoResult("several fluxes, or none, satisfy the osmotic law at one place: its "
                                "coefficients bend it too far")
@@ -128,7 +128,8 @@ class March:
         """d(state)/ds at s = (x/L)^⅓; states that a trial step overshoots to are held inside."""
         self.evaluations += 1
         if self.evaluations > MOST_EVALUATIONS:
-            raise NoResult("the flux dies out long before the outlet: far more membrane than the feed flow can use")
+            raise NoResult("the flux dies out long before the outlet: far more membrane than the feed flow "
+                           "can use")
         flow, solute, pressure, passed = state.tolist()
         flow, pressure = max(flow, 1e-9), max(pressure, 0.0)
         stretch = 3.0 * s * s
