@@ -1,8 +1,8 @@
-"""Flux by the osmotic-pressure model for each law of osmotic pressure, for one row of plain floats and for arrays.
+"""Flux by the osmotic-pressure model for each law of osmotic pressure, for plain floats and for arrays.
 
-In all: H = L_p σ [π(C_w) − π(C_p)] is the flux taken by the osmotic pressure, `darcy` is L_p Δp. Where H at no flux
-is L_p Δp or more, the flux is 0. NaN where there is no single flux: the mass-transfer coefficient is 0, or not
-exactly one flux from 0 to L_p Δp solves the equation.
+In all: H = L_p σ [π(C_w) − π(C_p)] is the flux taken by the osmotic pressure, `darcy` is L_p Δp. Where H at
+no flux is L_p Δp or more, the flux is 0. NaN where there is no single flux: the mass-transfer coefficient is
+0, or not exactly one flux from 0 to L_p Δp solves the equation.
 """
 
 from __future__ import annotations
@@ -57,7 +57,8 @@ def _least_slope(first, second, third, low, high):
 def _rises_to_end(first, second, third, bulk, limit, rejection) -> bool:
     """Whether the polynomial rises, and is not below 0 in the end, between C_b and the C_w at J = L_p Δp."""
     end = bulk / (rejection * math.exp(-min(limit, FARTHEST)) + (1.0 - rejection))
-    return first + end * (second + end * third) >= 0.0 and _least_slope(first, second, third, bulk, end) >= 0.0
+    ends_high = first + end * (second + end * third) >= 0.0
+    return ends_high and _least_slope(first, second, third, bulk, end) >= 0.0
 
 
 def polynomial_one(pressure, permeability, transfer, bulk, b1, b2, b3, rejection, reflection) -> float:

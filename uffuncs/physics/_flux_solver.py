@@ -1,13 +1,14 @@
 """The osmotic-pressure model of the flux, solved: the J for which J + H(C_w) = L_p Δp.
 
-H = L_p σ [π(C_w) − π(C_p)] is the flux that the osmotic pressure takes away; the film gives
-C_w = C_b/(R e^(−x) + 1 − R), x = J/k, and C_p = (1 − R) C_w. A law of osmotic pressure is a function `terms` of
-C_w that gives H and its first and second derivative with respect to ln C_w. The search starts at the surface
+H = L_p σ [π(C_w) − π(C_p)] is the flux that the osmotic pressure takes away; the film gives C_w = C_b/(R
+e^(−x) + 1 − R), x = J/k, and C_p = (1 − R) C_w. A law of osmotic pressure is a function `terms` of C_w that
+gives H and its first and second derivative with respect to ln C_w. The search starts at the surface
 concentration whose osmotic pressure alone meets Δp: H is of the order of L_p Δp wherever it is evaluated, and
 nothing overflows, however large L_p Δp/k.
 
 Halley's steps, kept in a bracket; exponentials are what they solve best, and from this start two to five are
-enough. `solve_one` is for one plain float, `solve_rows` for arrays; both do the same operations in the same order.
+enough. `solve_one` is for one plain float, `solve_rows` for arrays; both do the same operations in the same
+order.
 """
 
 from __future__ import annotations
@@ -23,8 +24,8 @@ LAST_STEP = 1e-6
 ROUNDING = 4e-16
 #: Steps before halvings are mixed in, and the most there are.
 FREE_STEPS, MOST_STEPS = 9, 200
-#: The bracket's upper end above the start. With a second coefficient below 0 the start may lie below the root, by
-#: ln(1/(1 − √3/2)) = 2.01 at most.
+#: The bracket's upper end above the start. With a second coefficient below 0 the start may lie below the
+#: root, by ln(1/(1 − √3/2)) = 2.01 at most.
 MARGIN = 2.1
 #: Lowest C_b over C_w, so that e^(−J/k) stays an ordinary number.
 LEAST = 1e-307
@@ -45,7 +46,7 @@ def start_one(
     if rise > passed:
         x = max(-math.log((rise - passed) / rejection), 0.0)
         return min(x, limit), min(x + MARGIN, top)
-    # C_w cannot exceed C_b/(1 − R), which leaves some flux: start at the bend of C_w(x), or where that end leads to.
+    # C_w cannot exceed C_b/(1 − R), which leaves some flux: start at the bend of C_w(x), or where that leads.
     plateau = terms(bulk / passed)[0]
     return min(limit, max(limit - plateau / transfer, math.log(rejection / passed), 0.0)), top
 
@@ -157,8 +158,8 @@ def single_bracket(nodes: np.ndarray, excess: np.ndarray) -> tuple[np.ndarray, n
     Returns
     -------
     tuple of arrays
-        The ends of the first interval in which the sign changes, and the number of solutions. No flux is one of
-        them where the osmotic pressure at no flux is not overcome.
+        The ends of the first interval in which the sign changes, and the number of solutions. No flux is one
+        of them where the osmotic pressure at no flux is not overcome.
     """
     above = excess >= 0.0
     change = above[:, 1:] != above[:, :-1]

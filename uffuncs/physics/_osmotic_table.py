@@ -1,7 +1,7 @@
 """Osmotic pressure from measured points: monotone cubic interpolation through them and the origin.
 
-Piecewise cubics whose slope at a point is the weighted harmonic mean of its neighbours' (Fritsch & Butland): no
-overshoot between points, hence no osmotic pressure that falls where the points do not.
+Piecewise cubics whose slope at a point is the weighted harmonic mean of its neighbours' (Fritsch & Butland):
+no overshoot between points, hence no osmotic pressure that falls where the points do not.
 """
 
 from __future__ import annotations
