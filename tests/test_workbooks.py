@@ -48,7 +48,7 @@ def test_the_design_is_one_plant(design):
     kept = value("final_retentate") * 75 / (value("feed_flow") * 6.2)
     assert value("cascade_yield") == pytest.approx(kept, rel=1e-9)
     assert value("mean_flux") == pytest.approx(1e3 * value("total_permeate") / value("total_area"), rel=1e-9)
-    assert value("installed_area") == 30 * value("total_modules") >= 1.05 * value("total_area")
+    assert value("installed_area") == 16 * value("total_modules") >= 1.05 * value("total_area")
     osmotic = [value(f"osmotic_{n}") for n in (1, 2, 3)]
     pi_w, pi_p = (sum(b * c ** (n + 1) for n, b in enumerate(osmotic)) for c in (value("wall_concentration"), value("permeate_protein")))
     assert value("operating_flux") == pytest.approx(value("permeability") * (value("operating_pressure") - pi_w + pi_p), rel=1e-8)

@@ -83,6 +83,7 @@ def _function(sheet, row: int, record) -> int:
     top = row
     for n, text in enumerate(TITLES, 1):
         sheet.cell(row, n, text).style = "Headline 3"
+        sheet.cell(row, n).alignment = Alignment(horizontal="left" if n in (1, 3, 7) else "right", indent=int(n in (3, 7)))
     places, column, lowest = [], RANGES, row
     cells = example_cells(record)
     names = [a.name for a in record.arguments] + [f"further argument {n}" for n in range(1, 1 + len(cells) - len(record.arguments))]
@@ -112,7 +113,7 @@ def _function(sheet, row: int, record) -> int:
             low, high = (argument.quantity.low, argument.quantity.high) if argument.quantity else (None, None)
             for m, value in enumerate((argument.unit, low, high, None if argument.required else argument.default_text,
                                        meaning_text(argument)), 3):
-                sheet.cell(row, m, value)
+                sheet.cell(row, m, value).alignment = Alignment(horizontal="left" if m in (3, 7) else "right", indent=int(m in (3, 7)))
     while places and not places[-1]:
         places.pop()
     formula = f"={record.worksheet_name}({','.join(places)})"
@@ -128,7 +129,8 @@ def _result(sheet, row: int, record, cells: list, formula: str, column: int) -> 
     sheet.cell(row, 2, formula[1:]).style = "Explanatory Text"
     row += 1
     sheet.cell(row, 1, "Result")
-    sheet.cell(row, 3, record.result_unit if not record.block else "a block, to the right")
+    unit = sheet.cell(row, 3, record.result_unit if not record.block else "a block, to the right")
+    unit.alignment = Alignment(horizontal="left", indent=1)
     if isinstance(result, list):
         first = row
         last_row, last_column = first + len(result) - 1, column + len(result[0]) - 1

@@ -73,12 +73,12 @@ def basis(workbook: Workbook) -> None:
     page.input("Pressure of the test", "Δp_tm", "29 psi", "bar", "typed with its unit, as on the test sheet", "clean_water_pressure")
     page.input("Water temperature of the test", "T", 25, "°C", "", "clean_water_temperature")
     page.input("Fouling resistance over membrane resistance", "R_f/R_m", 1.4, "-", "after 8 h, from the trial", "fouling_ratio")
-    page.input("Membrane area of one module", "A_m", 30, "m²", "spiral-wound", "module_area")
+    page.input("Membrane area of one module", "A_m", 16, "m²", "spiral-wound", "module_area")
     page.input("Length of the feed channel", "L", 0.9, "m", "", "channel_length")
     page.input("Height of the feed channel", "h", 0.8, "mm", "", "channel_height")
     page.input("Filament diameter of the spacer", "d_f", 0.4, "mm", "", "filament_diameter")
     page.input("Voidage of the spacer", "ε", 0.86, "-", "", "spacer_voidage")
-    page.input("Modules in series in one vessel", "n", 3, "-", "", "modules_in_series")
+    page.input("Modules in series in one vessel", "n", 2, "-", "", "modules_in_series")
     page.section("Operation")
     page.input("Velocity in the feed channel", "u", 0.25, "m/s", "between the filaments", "velocity")
     page.input("Pressure at the inlet of a loop", "p_f", 3.8, "bar", "gauge", "inlet_pressure")
@@ -405,7 +405,7 @@ def questions(workbook: Workbook) -> None:
     page.section("Do a bidder's numbers hold?")
     for label, claimed, calculated, sense, unit in (
         ("Mean flux of the cascade, claimed", "75 gfd", "mean_flux", "at most", "L/(m²·h)"),
-        ("Membrane area installed, claimed", 300, "installed_area", "at least", "m²"),
+        ("Membrane area installed, claimed", 210, "installed_area", "at least", "m²"),
         ("Specific energy, claimed", 0.25, "specific_energy", "equal", "kWh/m³"),
     ):
         cell = page.input(label, "", claimed, unit, "invented bid")

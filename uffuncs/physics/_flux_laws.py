@@ -63,17 +63,17 @@ def _rises_to_end(first, second, third, bulk, limit, rejection) -> bool:
 
 def polynomial_one(pressure, permeability, transfer, bulk, b1, b2, b3, rejection, reflection) -> float:
     darcy = permeability * pressure
-    if bulk == 0.0 or permeability == 0.0 or rejection == 0.0 or reflection == 0.0 or b1 == b2 == b3 == 0.0:
+    d1, d2, d3 = difference_coefficients(b1, b2, b3, rejection)
+    factor = permeability * reflection * rejection
+    if bulk == 0.0 or factor * d1 == factor * d2 == factor * d3 == 0.0:
         return darcy
     if transfer == 0.0:
         return math.nan
-    d1, d2, d3 = difference_coefficients(b1, b2, b3, rejection)
     rises, limit = _rises(d1, d2, d3), darcy / transfer
     if not rises and not _rises_to_end(d1, d2, d3, bulk, limit, rejection):
         row = (pressure, permeability, transfer, bulk, b1, b2, b3, rejection, reflection)
         with np.errstate(all="ignore"):
             return float(polynomial_rows(*(np.array([v]) for v in row))[0])
-    factor = permeability * reflection * rejection
     d1, d2, d3 = factor * d1, factor * d2, factor * d3
 
     def terms(c):
@@ -98,9 +98,8 @@ def polynomial_rows(pressure, permeability, transfer, bulk, b1, b2, b3, rejectio
     darcy = permeability * pressure
     d1, d2, d3 = difference_coefficients(b1, b2, b3, rejection)
     factor = permeability * reflection * rejection
-    plain = without_osmosis(bulk, permeability, rejection, reflection)
-    plain |= (b1 == 0.0) & (b2 == 0.0) & (b3 == 0.0)
     law = np.stack([factor * d1, factor * d2, factor * d3])
+    plain = (bulk == 0.0) | np.all(law == 0.0, axis=0)
     flux = np.where(plain, darcy, np.nan)
     sound = ~plain & (transfer > 0.0)
     simple = sound & _rises(d1, d2, d3)
@@ -191,20 +190,23 @@ def _power_terms(c, coefficient, exponent):
 
 def power_one(pressure, permeability, transfer, bulk, b, exponent, rejection, reflection) -> float:
     darcy = permeability * pressure
-    if bulk == 0.0 or permeability == 0.0 or rejection == 0.0 or reflection == 0.0 or b == 0.0:
-        return darcy
-    if transfer == 0.0:
-        return math.nan
     # The difference between surface and permeate is again a power law, b (1 − (1 − R)^n) C_w^n.
     kept = 1.0 if rejection == 1.0 else -math.expm1(exponent * math.log1p(-rejection))
     coefficient = permeability * reflection * b * kept
+    if bulk == 0.0 or coefficient == 0.0:
+        return darcy
+    if transfer == 0.0:
+        return math.nan
 
     def terms(c):
-        return _power_terms(c, coefficient, exponent)
+        try:
+            return _power_terms(c, coefficient, exponent)
+        except OverflowError:
+            return math.inf, math.inf, math.inf
 
     if terms(bulk)[0] >= darcy:
         return 0.0
-    rise = bulk * math.exp(math.log(coefficient / darcy) / exponent)
+    rise = math.exp(math.log(bulk) + (math.log(coefficient) - math.log(darcy)) / exponent)
     x, high = start_one(terms, rise, darcy / transfer, transfer, bulk, rejection)
     return solve_one(terms, darcy, transfer, bulk, rejection, x, high)
 
@@ -212,9 +214,9 @@ def power_one(pressure, permeability, transfer, bulk, b, exponent, rejection, re
 def power_rows(pressure, permeability, transfer, bulk, b, exponent, rejection, reflection) -> np.ndarray:
     """power_one for arrays of one size."""
     darcy = permeability * pressure
-    plain = without_osmosis(bulk, permeability, rejection, reflection) | (b == 0.0)
-    flux = np.where(plain, darcy, np.nan)
     coefficient = permeability * reflection * b * -np.expm1(exponent * np.log1p(-rejection))
+    plain = (bulk == 0.0) | (coefficient == 0.0)
+    flux = np.where(plain, darcy, np.nan)
     start = _power_terms(bulk, coefficient, exponent)[0]
     sound = ~plain & (transfer > 0.0)
     flux[sound & (start >= darcy)] = 0.0
@@ -222,7 +224,7 @@ def power_rows(pressure, permeability, transfer, bulk, b, exponent, rejection, r
     if rows.any():
         law = coefficient[rows], exponent[rows]
         a, k, c, r = (v[rows] for v in (darcy, transfer, bulk, rejection))
-        rise = c * np.exp(np.log(law[0] / a) / law[1])
+        rise = np.exp(np.log(c) + (np.log(law[0]) - np.log(a)) / law[1])
         x, high = start_rows(_power_terms, law, rise, a / k, k, c, r)
         flux[rows] = solve_rows(_power_terms, law, a, k, c, r, x, np.zeros(len(x)), high)
     return flux
@@ -243,11 +245,11 @@ def _end_rows(bulk, highest, rejection) -> np.ndarray:
 
 def table_one(pressure, permeability, transfer, bulk, table: OsmoticTable, rejection, reflection) -> float:
     darcy = permeability * pressure
-    if bulk == 0.0 or permeability == 0.0 or rejection == 0.0 or reflection == 0.0:
+    factor, passed = permeability * reflection, 1.0 - rejection
+    if bulk == 0.0 or factor == 0.0 or rejection == 0.0:
         return darcy
     if transfer == 0.0 or bulk > table.highest:
         return math.nan
-    factor, passed = permeability * reflection, 1.0 - rejection
     if passed > 0.0 and not table.steepens:
         one = [np.array([v]) for v in (pressure, permeability, transfer, bulk, rejection, reflection)]
         with np.errstate(all="ignore"):
@@ -287,7 +289,7 @@ def table_rows(
 ) -> np.ndarray:
     """table_one for arrays of one size."""
     darcy, factor, passed = permeability * pressure, permeability * reflection, 1.0 - rejection
-    plain = without_osmosis(bulk, permeability, rejection, reflection)
+    plain = (bulk == 0.0) | (factor == 0.0) | (rejection == 0.0)
     flux = np.where(plain, darcy, np.nan)
     terms = _table_terms(table)
     sound = ~plain & (transfer > 0.0) & (bulk <= table.highest)

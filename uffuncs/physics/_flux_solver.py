@@ -42,9 +42,10 @@ def start_one(
     """
     passed = 1.0 - rejection
     top = limit * (1.0 + 1e-9)
-    rise = max(rise, LEAST)
-    if rise > passed:
-        x = max(-math.log((rise - passed) / rejection), 0.0)
+    if rise > passed or passed == 0.0:
+        x = max(-math.log((max(rise, LEAST) - passed) / rejection), 0.0)
+        if rise < LEAST and limit > x:  # the surface concentration is no number
+            return math.nan, math.nan
         return min(x, limit), min(x + MARGIN, top)
     # C_w cannot exceed C_b/(1 − R), which leaves some flux: start at the bend of C_w(x), or where that leads.
     plateau = terms(bulk / passed)[0]
@@ -84,9 +85,9 @@ def start_rows(terms: Callable, law: tuple, rise, limit, transfer, bulk, rejecti
     """start_one for arrays; `law` holds the arrays that `terms` takes after C_w."""
     passed = 1.0 - rejection
     top = limit * (1.0 + 1e-9)
-    rise = np.maximum(rise, LEAST)
-    met = rise > passed
-    x = np.maximum(-np.log(np.where(met, rise - passed, 1.0) / rejection), 0.0)
+    met = (rise > passed) | (passed == 0.0)
+    x = np.maximum(-np.log(np.where(met, np.maximum(rise, LEAST) - passed, 1.0) / rejection), 0.0)
+    x[met & (rise < LEAST) & (limit > x)] = np.nan
     high = np.minimum(x + MARGIN, top)
     if not met.all():
         rest = np.flatnonzero(~met)

@@ -65,7 +65,8 @@ def polarization_modulus(
             return math.nan
         left = intrinsic_rejection * math.exp(-flux / mass_transfer_coefficient) + passed
         return 1.0 / left if left > 0.0 else math.inf
-    modulus = 1.0 / (intrinsic_rejection * np.exp(-flux / mass_transfer_coefficient) + passed)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        modulus = 1.0 / (intrinsic_rejection * np.exp(-flux / mass_transfer_coefficient) + passed)
     return np.where(mass_transfer_coefficient > 0, modulus, np.nan)[()]
 
 
@@ -98,9 +99,11 @@ def surface_concentration(
         rise = math.exp(ratio) if ratio <= LARGEST_EXPONENT else math.inf
         surface = permeate_concentration + (retained * rise if retained != 0.0 else 0.0)
         return surface if surface >= 0.0 else math.nan
-    # Where nothing is retained, C_w = C_p, however large e^(J/k).
-    rise = np.where(retained != 0, np.exp(flux / mass_transfer_coefficient), 1.0)
-    surface = permeate_concentration + retained * rise
+    with np.errstate(divide="ignore", invalid="ignore"):
+        ratio = flux / mass_transfer_coefficient
+        rise = np.where(ratio <= LARGEST_EXPONENT, np.exp(np.minimum(ratio, LARGEST_EXPONENT)), np.inf)
+        # Where nothing is retained, C_w = C_p, however large e^(J/k).
+        surface = permeate_concentration + retained * np.where(retained != 0, rise, 1.0)
     return np.where((mass_transfer_coefficient > 0) & (surface >= 0), surface, np.nan)[()]
 
 
