@@ -14,7 +14,10 @@ __all__ = ["__version__"]
 
 def __getattr__(name: str):
     """Functions are looked up when first used, so that `import uffuncs` loads nothing heavy."""
-    if not name.startswith("_"):
+    from importlib.util import find_spec
+
+    # `from uffuncs import cell` asks here before it imports the module: leave modules to the import system.
+    if not name.startswith("_") and find_spec(f"uffuncs.{name}") is None:
         from .declaration import Function
         from .registry import find
 

@@ -195,7 +195,7 @@ class CompiledFunction:
             self._pieces([f if g.single else f[keep] for f, g in zip(flat, grids)], grids, keep, out, failed)
         else:
             self._pieces(flat, grids, None, out, failed)
-        bad = np.flatnonzero(~np.isfinite(out)) if not math.isfinite(out.sum()) else ()
+        bad = np.flatnonzero(~np.isfinite(out))
         for index in bad:
             errors.setdefault(divmod(int(index), shape[1]), failed.get(int(index), _NO_RESULT))
         return out.reshape(shape), errors
@@ -303,13 +303,12 @@ class CompiledFunction:
             for n, column in enumerate(columns):
                 q = quantities[min(n, len(quantities) - 1)]
                 value = column[r] if isinstance(column, RANGES) else column
-                row.append(value if isinstance(value, str) else _finite_or_error(q.from_si(float(value)), self.name))
+                row.append(value if isinstance(value, str) else self._finite_or_error(q.from_si(float(value)), values))
             block.append(row)
         return block
 
-
-def _finite_or_error(value: float, name: str) -> float | ErrorValue:
-    return value if math.isfinite(value) else ErrorValue("#NUM!", f"{name}: no finite result")
+    def _finite_or_error(self, value: float, values: list) -> float | ErrorValue:
+        return value if math.isfinite(value) else ErrorValue("#NUM!", no_result_reason(self.record, values))
 
 
 _NO_RESULT = ErrorValue("#NUM!")

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from functools import lru_cache
 from importlib import import_module
 
 from .declaration import DECLARED, Function, Tool
@@ -25,13 +24,17 @@ TOPICS = {
 }
 
 
-@lru_cache(maxsize=1)
+_loaded: dict[str, Function | Tool] = {}
+
+
 def functions() -> dict[str, Function | Tool]:
     """Worksheet name to record, in the order of the topics."""
-    for module in (m for modules in TOPICS.values() for m in modules):
-        import_module(f"uffuncs.{module}")
-    order = list(TOPICS)
-    return dict(sorted(DECLARED.items(), key=lambda item: order.index(item[1].topic)))
+    if not _loaded:
+        for module in (m for modules in TOPICS.values() for m in modules):
+            import_module(f"uffuncs.{module}")
+        order = list(TOPICS)
+        _loaded.update(sorted(DECLARED.items(), key=lambda item: order.index(item[1].topic)))
+    return _loaded
 
 
 def find(name: str) -> Function | Tool | None:

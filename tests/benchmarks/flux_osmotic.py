@@ -1,4 +1,4 @@
-"""The osmotic-pressure flux: one cell, and a column of 100,000 rows against a loop of scipy's brentq over them."""
+"""The osmotic-pressure flux: one cell, and 100,000 rows against a loop of scipy's brentq over them."""
 
 from __future__ import annotations
 
@@ -21,7 +21,7 @@ PROTEIN = (0.0044583, -1.722525e-06, 8.004675e-08)
 
 @lru_cache(maxsize=1)
 def columns() -> tuple[list, list]:
-    """Pressure, permeability, mass-transfer coefficient, concentration, coefficients, rejection: in cell units and in SI."""
+    """Pressure, permeability, transfer, concentration, coefficients, rejection: in cell units and in SI."""
     rng = np.random.default_rng(20)
     cells = [rng.uniform(low, high, ROWS) for low, high in ((0.2, 6), (20, 400), (5, 60), (1, 150))]
     cells += [*PROTEIN, rng.uniform(0.9, 1.0, ROWS)]
@@ -47,7 +47,7 @@ def array_seconds() -> float:
 
 
 def brentq_seconds() -> tuple[float, float]:
-    """Seconds of a loop of brentq for all rows, scaled from a sample, and the largest difference in flux, relative."""
+    """Seconds of a loop of brentq for all rows, scaled from a sample, and the largest difference in flux."""
     from scipy.optimize import brentq
 
     arguments = columns()[1]
@@ -82,7 +82,9 @@ def rows():
     yield Row("one call with plain floats", scalar_bare(), "µs", 40)
     yield Row("one cell, polynomial", scalar_cell(), "µs", 40)
     yield Row("one cell, power law", scalar_cell("UF_FLUX_OSMOTIC_POWER", power), "µs", 40)
-    yield Row("one cell, table of four points", scalar_cell("UF_FLUX_OSMOTIC_TABLE", (2, 100, 20, 40, *table)), "µs")
+    yield Row(
+        "one cell, table of four points", scalar_cell("UF_FLUX_OSMOTIC_TABLE", (2, 100, 20, 40, *table)), "µs"
+    )
     yield Row(f"{ROWS:,} rows", 1e3 * array, "ms")
     yield Row(f"the same by a loop of brentq, scaled from {SAMPLE:,} rows", 1e3 * loop, "ms")
     yield Row("loop of brentq over array", loop / array, "times", 30, least=True)

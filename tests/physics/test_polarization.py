@@ -1,4 +1,4 @@
-"""Film and gel model: limits, inverse pairs, the fit of the gel concentration and its interval, flux-step tests."""
+"""Film and gel model: limits, inverse pairs, fit and interval of the gel concentration, flux-step tests."""
 
 import math
 
@@ -18,7 +18,7 @@ concentrations = st.floats(1e-3, 500)
 ratios = st.floats(0, 30)
 
 
-# --- film -----------------------------------------------------------------------------------------------------------
+# --- film ---------------------------------------------------------------------------------------------------
 
 
 @pytest.mark.parametrize("rejection", [0.0, 0.3, 0.9, 1 - 1e-12, 1.0])
@@ -34,7 +34,9 @@ def test_modulus_from_no_flux_to_its_limit(rejection):
 
 
 def test_modulus_without_limit_is_refused_with_its_reason(why):
-    assert call("UF_POLARIZATION_MODULUS", [1e5, 0.1]) == NUM and "too large a number" in why("UF_POLARIZATION_MODULUS", 1e5, 0.1)
+    assert call("UF_POLARIZATION_MODULUS", [1e5, 0.1]) == NUM and "too large a number" in why(
+        "UF_POLARIZATION_MODULUS", 1e5, 0.1
+    )
     assert call("UF_POLARIZATION_MODULUS", [1e5, 0.1, 0.9]) == pytest.approx(10)
     for rejection in (0, 0.5, 1):
         assert call("UF_POLARIZATION_MODULUS", [10, 0, rejection]) == NUM
@@ -50,7 +52,9 @@ def test_film_flux_is_the_inverse_of_the_surface_concentration(bulk, ratio, pass
     assert surface >= bulk * (1 - 1e-15)
     # C_w holds J/k in the digits that it has beyond C_b.
     slack = 4e-16 * surface / (bulk - permeate) / math.exp(ratio)
-    assert p.flux_film(1e-5, surface, bulk, permeate) == pytest.approx(ratio * 1e-5, rel=1e-12, abs=1e-5 * 4 * slack)
+    assert p.flux_film(1e-5, surface, bulk, permeate) == pytest.approx(
+        ratio * 1e-5, rel=1e-12, abs=1e-5 * 4 * slack
+    )
 
 
 @given(concentrations, st.floats(0, 300), st.floats(0, 1))
@@ -73,29 +77,44 @@ def test_film_reasons(why):
     assert "above bulk_concentration" in why("UF_SURFACE_CONCENTRATION", 100, 10, 10, 12)
     assert call("UF_SURFACE_CONCENTRATION", [0, 10, 10, 12]) == 10
     assert "more concentrated" in why("UF_SURFACE_CONCENTRATION", 0, 10, 10, 12)
-    assert call("UF_FLUX_FILM", [20, 100, 10, 10]) == NUM and "nothing is retained" in why("UF_FLUX_FILM", 20, 100, 10, 10)
-    assert call("UF_FLUX_FILM", [20, 5, 10, 7]) == NUM and "not below both" in why("UF_FLUX_FILM", 20, 5, 10, 7)
+    assert call("UF_FLUX_FILM", [20, 100, 10, 10]) == NUM and "nothing is retained" in why(
+        "UF_FLUX_FILM", 20, 100, 10, 10
+    )
+    assert call("UF_FLUX_FILM", [20, 5, 10, 7]) == NUM and "not below both" in why(
+        "UF_FLUX_FILM", 20, 5, 10, 7
+    )
     assert call("UF_FLUX_FILM", [20, 5, 10]) == pytest.approx(-20 * math.log(2))
     assert "negative" in why("UF_FLUX_FILM", 20, 5, 10)
     column = call("UF_FLUX_FILM", [20, [[100], [5], [10]], 10, [[0], [7], [0]]])
     assert column[0][0] == pytest.approx(20 * math.log(10)) and column[1][0] == NUM and column[2][0] == 0
 
 
-# --- gel model ------------------------------------------------------------------------------------------------------
+# --- gel model ----------------------------------------------------------------------------------------------
 
 
 def test_limiting_flux_at_its_edges(why):
     assert call("UF_FLUX_LIMITING", [20, 300, 300]) == 0
     assert call("UF_FLUX_LIMITING", [0, 300, 30]) == 0
     assert p.flux_limiting(1.0, 300.0, 300 * (1 - 2**-40)) == pytest.approx(2**-40, rel=1e-12)
-    for cells, words in (([20, 300, 301], "above gel_concentration"), ([20, 300, 0], "bulk concentration is 0"),
-                         ([20, 300, 30, 30], "nothing is retained"), ([20, 300, 30, 40], "nothing is retained")):
+    for cells, words in (
+        ([20, 300, 301], "above gel_concentration"),
+        ([20, 300, 0], "bulk concentration is 0"),
+        ([20, 300, 30, 30], "nothing is retained"),
+        ([20, 300, 30, 40], "nothing is retained"),
+    ):
         assert call("UF_FLUX_LIMITING", cells) == NUM and words in why("UF_FLUX_LIMITING", *cells)
     column = call("UF_FLUX_LIMITING", [20, 300, [[0], [30], [300], [301]]])
-    assert [row[0] if isinstance(row[0], float) else "#" for row in column] == ["#", pytest.approx(20 * math.log(10)), 0, "#"]
+    assert [row[0] if isinstance(row[0], float) else "#" for row in column] == [
+        "#",
+        pytest.approx(20 * math.log(10)),
+        0,
+        "#",
+    ]
 
 
-GEL = dict(viscosity=1e-3, membrane_resistance=3.6e12, mass_transfer_coefficient=20 * LMH, gel_concentration=300.0)
+GEL = dict(
+    viscosity=1e-3, membrane_resistance=3.6e12, mass_transfer_coefficient=20 * LMH, gel_concentration=300.0
+)
 
 
 def test_gel_flux_and_its_branches(why):
@@ -104,7 +123,9 @@ def test_gel_flux_and_its_branches(why):
     assert p.flux_gel(1e5, bulk_concentration=300.0, **GEL) == 0
     assert math.isnan(p.flux_gel(1e5, bulk_concentration=300.1, **GEL))
     cells = [1, 3.6e12, 20, 300]
-    assert call("UF_FLUX_GEL", [1, *cells, 301]) == NUM and "the bulk would be gel" in why("UF_FLUX_GEL", 1, *cells, 301)
+    assert call("UF_FLUX_GEL", [1, *cells, 301]) == NUM and "the bulk would be gel" in why(
+        "UF_FLUX_GEL", 1, *cells, 301
+    )
     assert why("UF_FLUX_GEL", 0.2, *cells, 30).startswith("ok: pressure-controlled")
     assert why("UF_FLUX_GEL", 1, *cells, 0).startswith("ok: pressure-controlled")
     assert why("UF_FLUX_GEL", 2, *cells, 30).startswith("ok: limiting")
@@ -113,7 +134,9 @@ def test_gel_flux_and_its_branches(why):
     assert block.shape == (31, 6)
     loop = [[p.flux_gel(float(a), bulk_concentration=float(b), **GEL) for b in bulk] for a in pressure[:, 0]]
     assert block == pytest.approx(np.array(loop), rel=1e-14, nan_ok=True)
-    assert np.all(np.diff(block[:, :5], axis=0) >= 0) and np.all(block[:, :5] <= pressure / 3.6e9 * (1 + 1e-15))
+    assert np.all(np.diff(block[:, :5], axis=0) >= 0) and np.all(
+        block[:, :5] <= pressure / 3.6e9 * (1 + 1e-15)
+    )
 
 
 @given(st.floats(1, 299), st.floats(0.001, 1), st.floats(0, 1e13))
@@ -123,17 +146,23 @@ def test_knee_is_where_darcy_meets_the_share(bulk, share, fouling):
     assert knee / (1e-3 * (3.6e12 + fouling)) == pytest.approx(share * limit, rel=1e-12)
     flux = p.flux_gel(1.001 * knee / share, bulk_concentration=bulk, fouling_resistance=fouling, **GEL)
     assert flux == limit
-    assert p.flux_gel(0.999 * knee, bulk_concentration=bulk, fouling_resistance=fouling, **GEL) < share * limit * (1 + 1e-12)
+    assert p.flux_gel(
+        0.999 * knee, bulk_concentration=bulk, fouling_resistance=fouling, **GEL
+    ) < share * limit * (1 + 1e-12)
 
 
 def test_knee_at_its_edges(why):
     cells = [1, 3.6e12, 20, 300]
     assert call("UF_PRESSURE_KNEE", [*cells, 300]) == 0
-    assert call("UF_PRESSURE_KNEE", [*cells, 0]) == NUM and "nothing limits" in why("UF_PRESSURE_KNEE", *cells, 0)
-    assert call("UF_PRESSURE_KNEE", [*cells, 301]) == NUM and "would be gel" in why("UF_PRESSURE_KNEE", *cells, 301)
+    assert call("UF_PRESSURE_KNEE", [*cells, 0]) == NUM and "nothing limits" in why(
+        "UF_PRESSURE_KNEE", *cells, 0
+    )
+    assert call("UF_PRESSURE_KNEE", [*cells, 301]) == NUM and "would be gel" in why(
+        "UF_PRESSURE_KNEE", *cells, 301
+    )
 
 
-# --- fit of the gel concentration -----------------------------------------------------------------------------------
+# --- fit of the gel concentration ---------------------------------------------------------------------------
 
 BULK = np.array([10.0, 20, 40, 80, 160])
 
@@ -159,7 +188,9 @@ def test_gel_fit_against_a_general_library():
     rest = flux - line.intercept - line.slope * logs
     for end in (low, high):
         at = math.log(end)
-        error = math.sqrt(rest @ rest / (n - 2) * (1 / n + (at - logs.mean()) ** 2 / np.sum((logs - logs.mean()) ** 2)))
+        error = math.sqrt(
+            rest @ rest / (n - 2) * (1 / n + (at - logs.mean()) ** 2 / np.sum((logs - logs.mean()) ** 2))
+        )
         assert abs(line.intercept + line.slope * at) == pytest.approx(t * error, rel=1e-8)
     assert low < gel < high and math.log(high / gel) > math.log(gel / low)
     assert gel_error == pytest.approx(gel * math.log(high / low) / (2 * t), rel=0.01)
@@ -191,7 +222,7 @@ def test_gel_fit_of_points_that_tell_little(why):
     assert "no end" in p.gel_fit.__doc__
 
 
-# --- critical flux --------------------------------------------------------------------------------------------------
+# --- critical flux ------------------------------------------------------------------------------------------
 
 STEPS = np.array([0, 10, 20, 30, 40, 50, 60]) * LMH
 
@@ -227,4 +258,6 @@ def test_critical_flux_that_a_test_does_not_tell(why):
     assert "first two steps is 0" in why("UF_CRITICAL_FLUX", flux, [[0], [0], [1]])
     assert "2 steps" in why("UF_CRITICAL_FLUX", [[0], [20], [30]], pressure)
     head = [[0], *flux], [[0.02], [0.05], [0.1], [0.3]]
-    assert call("UF_CRITICAL_FLUX", [*head]) == pytest.approx(20) and "static head" in why("UF_CRITICAL_FLUX", *head)
+    assert call("UF_CRITICAL_FLUX", [*head]) == pytest.approx(20) and "static head" in why(
+        "UF_CRITICAL_FLUX", *head
+    )

@@ -24,11 +24,6 @@ TABLE_LAST_STEP = 1e-9
 FARTHEST = 690.0
 
 
-def without_osmosis(bulk, permeability, rejection, reflection):
-    """Where no osmotic pressure can act, whatever the mass transfer."""
-    return (bulk == 0.0) | (permeability == 0.0) | (rejection == 0.0) | (reflection == 0.0)
-
-
 # --- polynomial ---------------------------------------------------------------------------------------------
 
 
@@ -148,9 +143,11 @@ def _polynomial_brackets(law, darcy, transfer, bulk, rejection):
     passed = 1.0 - rejection
     h1, h2, h3 = (part * bulk**n for n, part in enumerate(law, 1))
     lower = np.stack([h1, 2 * h2 - passed * h1, 3 * h3 - 2 * passed * h2, -3 * passed * h3], axis=1)
+    lower /= transfer[:, None]
+    sound = np.isfinite(lower).all(axis=1)
     companion = np.zeros((len(bulk), 4, 4))
     companion[:, [1, 2, 3], [0, 1, 2]] = 1.0
-    companion[:, 0] = -lower / transfer[:, None]
+    companion[sound, 0] = -lower[sound]
     # The real parts of complex roots are points like any other: they do no harm.
     inverse = np.linalg.eigvals(companion).real
     end = darcy / transfer
@@ -163,7 +160,8 @@ def _polynomial_brackets(law, darcy, transfer, bulk, rejection):
     taken = c * (first + c * (second + c * third))
     excess = transfer[:, None] * nodes + taken - darcy[:, None]
     # At the end k x is L_p Δp up to rounding: the sign of H alone decides there.
-    return single_bracket(nodes, np.where(nodes >= end[:, None], taken, excess))
+    low, high, solutions = single_bracket(nodes, np.where(nodes >= end[:, None], taken, excess))
+    return low, high, np.where(sound, solutions, 0)
 
 
 def several_by_polynomial(
@@ -236,11 +234,11 @@ def power_rows(pressure, permeability, transfer, bulk, b, exponent, rejection, r
 def _end_one(bulk, highest, rejection) -> float:
     """The x at which the surface reaches the highest concentration measured; infinite where it never does."""
     share = (bulk / highest - (1.0 - rejection)) / rejection
-    return -math.log(share) if share > 0.0 else math.inf
+    return -math.log(min(share, 1.0)) if share > 0.0 else math.inf
 
 
 def _end_rows(bulk, highest, rejection) -> np.ndarray:
-    return -np.log(np.maximum((bulk / highest - (1.0 - rejection)) / rejection, 0.0))
+    return -np.log(np.clip((bulk / highest - (1.0 - rejection)) / rejection, 0.0, 1.0))
 
 
 def table_one(pressure, permeability, transfer, bulk, table: OsmoticTable, rejection, reflection) -> float:
@@ -321,7 +319,7 @@ def _table_brackets(table, law, darcy, transfer, bulk, rejection):
     b, r = bulk[:, None], rejection[:, None]
     most = np.minimum(b / (r * np.exp(-last[:, None]) + passed), table.highest)
     c = b * np.exp(np.log(most / b) * np.linspace(0.0, 1.0, SCAN))
-    nodes = np.minimum(-np.log(np.maximum((b / c - passed) / r, 1e-300)), last[:, None])
+    nodes = np.minimum(-np.log(np.clip((b / c - passed) / r, 1e-300, 1.0)), last[:, None])
     nodes[:, 0], nodes[:, -1] = 0.0, last
     excess = transfer[:, None] * nodes + _table_terms(table)(c, factor, passed)[0] - darcy[:, None]
     # Where the scan ends at k x = L_p Δp, the osmotic pressure is what is left: never below 0.

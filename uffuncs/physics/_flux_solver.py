@@ -20,7 +20,7 @@ import numpy as np
 
 #: A step below this, relative to the smaller of 1 and J/k, is the last: its cube is the error that remains.
 LAST_STEP = 1e-6
-#: The same for a halving of the bracket, which leaves an error as large as itself.
+#: The same for a halving of the bracket, which leaves an error as large as itself; and what is rounding.
 ROUNDING = 4e-16
 #: Steps before halvings are mixed in, and the most there are.
 FREE_STEPS, MOST_STEPS = 9, 200
@@ -75,7 +75,7 @@ def solve_one(
         small = last_step
         if not low <= new <= high or (step > FREE_STEPS and step & 1):
             new, small = 0.5 * (low + high), ROUNDING
-        if abs(new - x) <= small * (x if x < 1.0 else 1.0):
+        if abs(new - x) <= small * (x if x < 1.0 else 1.0) + ROUNDING * x:
             return min(transfer * new, darcy)
         x = new
     return math.nan
@@ -134,7 +134,7 @@ def _solve_piece(terms, law, darcy, transfer, bulk, rejection, x, low, high, las
         if astray.any():
             new[astray] = 0.5 * (low[astray] + high[astray])
             small = np.where(astray, ROUNDING, last_step)
-        done = np.abs(new - x) <= small * np.minimum(x, 1.0)
+        done = np.abs(new - x) <= small * np.minimum(x, 1.0) + ROUNDING * x
         x = new
         if done.any():
             flux[rows[done]] = np.minimum(transfer[done] * x[done], darcy[done])

@@ -18,7 +18,6 @@ from ._flux_laws import (
     several_by_table,
     table_one,
     table_rows,
-    without_osmosis,
 )
 from ._osmotic_table import OsmoticTable
 from .polarization import FILM, polarization_modulus
@@ -58,6 +57,11 @@ def _rows(function, *values):
 
 
 # --- reasons and cautions -----------------------------------------------------------------------------------
+
+
+def without_osmosis(bulk, permeability, rejection, reflection):
+    """Where no osmotic pressure can act, whatever the mass transfer."""
+    return (bulk == 0.0) | (permeability == 0.0) | (rejection == 0.0) | (reflection == 0.0)
 
 
 def _no_transfer(

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from itertools import chain
 
-from .. import cell as contract
+from ..cell import call, compile_function
 from ..declaration import Function, Tool, cell_tool
 from ..errors import CellError, ErrorValue, InvalidInput, NotAvailable, shortened
 from ..reading import unwrapped
@@ -41,7 +41,7 @@ def uf_why(name, *cells):
 
 
 def _why_tool(record: Tool, cells) -> str | list[list[str]]:
-    result = contract.call(record.worksheet_name, list(cells))
+    result = call(record.worksheet_name, list(cells))
     if isinstance(result, list) and record.elementwise:
         return [[_reason(record, v) or "ok" for v in row] for row in result]
     if reason := _reason(record, result):
@@ -55,11 +55,11 @@ def _reason(record: Function | Tool, result: object) -> str:
 
 
 def _why_once(record: Function, cells) -> str:
-    result = contract.call(record.worksheet_name, list(cells))
+    result = call(record.worksheet_name, list(cells))
     for value in chain.from_iterable(result) if isinstance(result, list) else [result]:
         if reason := _reason(record, value):
             return reason
-    values = contract.compile_function(record.worksheet_name).si_values(cells)
+    values = compile_function(record.worksheet_name).si_values(cells)
     value = None if record.block or record.result_by or isinstance(result, str) else record.results[0].to_si(result)
     if careful := cautions(record, values, value):
         return shortened("caution: " + "; ".join(careful))
