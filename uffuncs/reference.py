@@ -5,7 +5,8 @@ from __future__ import annotations
 from itertools import groupby
 
 from .check_values import Check, checks_of
-from .declaration import Function, Tool, fitted_text, plain_rule
+from .declaration import Function, Tool
+from .docstrings import fitted_text, plain_rule
 from .registry import functions
 
 Record = Function | Tool

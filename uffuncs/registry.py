@@ -12,15 +12,15 @@ TOPICS = {
     "solution": ("physics.solution",),
     "osmotic": ("physics.osmotic",),
     "permeation": ("physics.permeation",),
-    "rejection": ("physics.rejection",),
-    "crossflow": ("physics.crossflow", "physics.crossflow_transfer", "physics.crossflow_pressure", "physics.module_profile",),
-    "polarization": ("physics.polarization", "physics.osmotic_flux",),
+    "rejection": ("physics.rejection", "physics.sieving_curve"),
+    "crossflow": ("physics.crossflow", "physics.crossflow_transfer", "physics.crossflow_pressure", "physics.module_profile"),
+    "polarization": ("physics.polarization", "physics.osmotic_flux"),
     "fouling": ("physics.fouling",),
-    "concentration": ("physics.concentration", "physics.batch", "physics.diafiltration", "physics.campaign",),
-    "plant": ("physics.plant", "physics.stages", "physics.cycles",),
+    "concentration": ("physics.concentration", "physics.batch", "physics.diafiltration", "physics.campaign"),
+    "plant": ("physics.plant", "physics.stages", "physics.cycles"),
     "energy": ("physics.energy",),
     "integrity": ("physics.integrity",),
-    "tools": ("tools.about", "tools.conversion", "tools.solving", "tools.uncertainty", "tools.claims",),
+    "tools": ("tools.about", "tools.conversion", "tools.solving", "tools.uncertainty", "tools.claims"),
 }
 
 
