@@ -13,6 +13,7 @@ from scipy.integrate import quad
 from uffuncs.cell import call
 from uffuncs.errors import ErrorValue, NotAvailable
 from uffuncs.physics import rejection as r
+from uffuncs.physics import sieving_curve
 
 LMH = 1e-3 / 3600
 fractions = st.floats(0, 1)
@@ -223,14 +224,14 @@ def test_a_retained_solute_has_no_sieving():
 
 @given(st.floats(0.05, 0.95), st.floats(1, 500), st.floats(0.05, 2))
 def test_curve_and_cut_off_belong_together(level, cut, spread):
-    assert r.rejection_curve(cut, cut, spread, level) == pytest.approx(level, rel=1e-12)
+    assert sieving_curve.rejection_curve(cut, cut, spread, level) == pytest.approx(level, rel=1e-12)
     masses = cut * np.exp(np.linspace(-4, 4, 2001) * spread)
-    measured = r.rejection_curve(masses, cut, spread, level)
-    assert r.cut_off(masses, measured, level) == pytest.approx(cut, rel=1e-4 * max(spread, 1))
+    measured = sieving_curve.rejection_curve(masses, cut, spread, level)
+    assert sieving_curve.cut_off(masses, measured, level) == pytest.approx(cut, rel=1e-4 * max(spread, 1))
 
 
 def test_sharp_curve():
-    rejections = [float(r.rejection_curve(m, 100.0, 0.0)) for m in (99.999, 100.0, 100.001)]
+    rejections = [float(sieving_curve.rejection_curve(m, 100.0, 0.0)) for m in (99.999, 100.0, 100.001)]
     assert rejections == [0, pytest.approx(0.9), 1]
 
 
@@ -238,13 +239,13 @@ def test_cut_off_of_scattered_points():
     masses, rejections = np.array([10.0, 20, 40, 80]), np.array([0.5, 0.8, 0.7, 0.95])
     # The middle two disagree and count as 0.75 both.
     expected = 40 * 2 ** ((0.9 - 0.75) / (0.95 - 0.75))
-    assert r.cut_off(masses, rejections) == pytest.approx(expected, rel=1e-12)
+    assert sieving_curve.cut_off(masses, rejections) == pytest.approx(expected, rel=1e-12)
     shuffled = [2, 0, 3, 1]
-    assert r.cut_off(masses[shuffled], rejections[shuffled]) == pytest.approx(expected, rel=1e-12)
+    assert sieving_curve.cut_off(masses[shuffled], rejections[shuffled]) == pytest.approx(expected, rel=1e-12)
     cells = [[[10], [20], [40], [80]], [[0.5], [0.8], [0.7], [0.95]]]
     assert "pooled" in why("CUT_OFF", *cells)
     # Two rejections at 20 kDa average to 0.75.
-    twice = r.cut_off(np.array([10.0, 20, 20, 40]), np.array([0.5, 0.7, 0.8, 0.95]))
+    twice = sieving_curve.cut_off(np.array([10.0, 20, 20, 40]), np.array([0.5, 0.7, 0.8, 0.95]))
     assert twice == pytest.approx(20 * 2**0.75, rel=1e-12)
     assert why("CUT_OFF", [[10], [20], [20], [40]], [[0.5], [0.8], [0.7], [0.95]]) == "ok"
 
@@ -255,14 +256,14 @@ def test_pooling_is_the_nearest_monotone_curve():
     rng = np.random.default_rng(5)
     for _ in range(20):
         masses, rejections = np.sort(rng.uniform(1, 100, 12)), np.round(rng.uniform(0, 1, 12), 3)
-        curve = r.monotone_curve(masses, rejections)[1]
+        curve = sieving_curve.monotone_curve(masses, rejections)[1]
         assert curve == pytest.approx(isotonic_regression(rejections).x, abs=1e-11)
 
 
 def test_cut_off_level_on_a_plateau_at_the_ends_and_outside():
     masses, rejections = np.array([10.0, 20, 40, 80]), np.array([0.5, 0.9, 0.9, 0.95])
-    assert r.cut_off(masses, rejections, 0.9) == pytest.approx(20)
-    assert r.cut_off(masses, rejections, np.array([0.5, 0.95])) == pytest.approx([10, 80])
+    assert sieving_curve.cut_off(masses, rejections, 0.9) == pytest.approx(20)
+    assert sieving_curve.cut_off(masses, rejections, np.array([0.5, 0.95])) == pytest.approx([10, 80])
     cells = [[[10], [20], [40], [80]], [["50 %"], ["70 %"], [0.9], [0.95]]]
     levels = [[0.4], [0.5], [0.7], [0.96]]
     assert [row[0] for row in call("UF_CUT_OFF", [*cells, levels])] == [
@@ -277,15 +278,15 @@ def test_cut_off_level_on_a_plateau_at_the_ends_and_outside():
 def test_cut_off_fit_recovers_noisy_data(cut, spread, seed):
     masses = cut * np.exp(np.linspace(-4, 1.5, 12) * spread)
     noise = np.random.default_rng(seed).normal(0, 0.01, 12)
-    rejections = np.clip(r.rejection_curve(masses, cut, spread) + noise, 0, 1)
-    found, width, error, width_error, r_squared = r.cut_off_fit(masses, rejections)
+    rejections = np.clip(sieving_curve.rejection_curve(masses, cut, spread) + noise, 0, 1)
+    found, width, error, width_error, r_squared = sieving_curve.cut_off_fit(masses, rejections)
     assert inside(found, error, cut, 10) and inside(width, width_error, spread, 10)
     assert r_squared > 0.98
 
 
 def test_cut_off_fit_of_exact_data():
     masses = np.array([5.0, 20, 60, 200])
-    found = r.cut_off_fit(masses, r.rejection_curve(masses, 80.0, 0.7))
+    found = sieving_curve.cut_off_fit(masses, sieving_curve.rejection_curve(masses, 80.0, 0.7))
     assert found == pytest.approx((80, 0.7, 0, 0, 1), rel=1e-7, abs=1e-6)
 
 
@@ -299,7 +300,7 @@ def test_cut_off_fit_of_exact_data():
 ])
 def test_cut_off_fit_refuses_what_tells_nothing(masses, rejections, reason):
     with pytest.raises(NotAvailable, match=reason):
-        r.cut_off_fit(np.array(masses, float), np.array(rejections, float))
+        sieving_curve.cut_off_fit(np.array(masses, float), np.array(rejections, float))
 
 
 # --- log removal ---------------------------------------------------------------------------------------
