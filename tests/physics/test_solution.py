@@ -224,17 +224,13 @@ def test_no_row_hides_another():
     assert len(set(keys)) == len(keys) == sum(map(len, solute_table().values()))
 
 
-#: Its published radius and diffusion coefficient belong to different samples and do not agree.
-UNLIKE = {"dextran t10"}
-
-
 @pytest.mark.parametrize("name", [n for n, p in solute_table().items()
                                   if {"radius", "diffusion_coefficient"} <= set(p)])
 def test_radius_and_diffusion_of_one_solute_agree(name):
     entries = solute_table()[name]
     diffusion = entries["diffusion_coefficient"]
     radius = s.radius_stokes(diffusion.value, diffusion.temperature, water_viscosity(diffusion.temperature))
-    assert radius == pytest.approx(entries["radius"].value, rel=0.4 if name in UNLIKE else 0.12)
+    assert radius == pytest.approx(entries["radius"].value, rel=0.12)
 
 
 def test_names_in_any_case_and_spacing():

@@ -61,9 +61,9 @@ def _why_once(record: Function, cells) -> str:
             return reason
     values = compile_function(record.worksheet_name).si_values(cells)
     value = None if record.block or record.result_by or isinstance(result, str) else record.results[0].to_si(result)
-    if careful := cautions(record, values, value):
-        return shortened("caution: " + "; ".join(careful))
-    told = remarks(record, values, value)
+    careful, told = cautions(record, values, value), remarks(record, values, value)
+    if careful:
+        return shortened("caution: " + "; ".join(careful + told))
     return shortened("ok: " + "; ".join(told)) if told else "ok"
 
 
