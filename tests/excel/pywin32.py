@@ -1,4 +1,4 @@
-"""Stands in for pywin32, so far as xlwings' functions and server ask for it: the real code of xlwings then runs anywhere.
+"""Stands in for pywin32, so far as xlwings' functions and server ask: xlwings' real code runs anywhere.
 
 Nothing of COM happens here. What pywin32 does to values on their way is modelled in `transport.py`.
 """
@@ -41,16 +41,32 @@ def _modules() -> dict[str, ModuleType]:
     contents = {
         "pywintypes": {"com_error": ComError, "error": ComError, "IID": str, "TimeType": datetime.datetime},
         "pythoncom": {
-            "com_error": ComError, "ole_error": ComError, "__file__": "no library", "CoInitialize": lambda *given: None,
-            "IID_IDispatch": "IDispatch", "IID_IEnumVARIANT": "IEnumVARIANT", "TypeIIDs": {"IDispatch": Dispatched},
+            "com_error": ComError,
+            "ole_error": ComError,
+            "__file__": "no library",
+            "CoInitialize": lambda *given: None,
+            "IID_IDispatch": "IDispatch",
+            "IID_IEnumVARIANT": "IEnumVARIANT",
+            "TypeIIDs": {"IDispatch": Dispatched},
         },
-        "win32api": {}, "win32con": {}, "win32gui": {}, "win32process": {}, "win32event": {}, "win32timezone": {},
-        "win32com": {}, "win32com.server": {},
+        "win32api": {},
+        "win32con": {},
+        "win32gui": {},
+        "win32process": {"GetWindowThreadProcessId": lambda window: (1, 1)},
+        "win32event": {},
+        "win32timezone": {},
+        "win32com": {},
+        "win32com.server": {},
         "win32com.client": {
-            "CDispatch": Dispatched, "CoClassBaseClass": Dispatched, "DispatchBaseClass": Dispatched,
-            "Dispatch": lambda value, **named: value, "DispatchEx": lambda value, **named: value,
+            "CDispatch": Dispatched,
+            "CoClassBaseClass": Dispatched,
+            "DispatchBaseClass": Dispatched,
+            "Dispatch": lambda value, **named: value,
+            "DispatchEx": lambda value, **named: value,
         },
-        "win32com.server.dispatcher": {}, "win32com.server.policy": {}, "win32com.server.exception": {},
+        "win32com.server.dispatcher": {},
+        "win32com.server.policy": {},
+        "win32com.server.exception": {},
         "win32com.server.util": {"wrap": lambda value, **named: value, "unwrap": _not_wrapped},
     }
     made = {}
@@ -65,7 +81,7 @@ def _modules() -> dict[str, ModuleType]:
 
 @contextlib.contextmanager
 def _windows():
-    """The modules and the libraries of ctypes that are there on Windows only, while xlwings is being imported."""
+    """The modules and libraries that only Windows has, while xlwings is being imported."""
     modules = _modules()
     real = ctypes.PyDLL
     sys.modules.update(modules)
@@ -103,6 +119,12 @@ class SheetRange:
     def __init__(self, rows):
         self._rows = [list(row) for row in rows]
         self._oleobj_ = self
+        self.Row = self.Column = 1
+        self.Rows, self.Columns = (
+            SimpleNamespace(Count=len(self._rows)),
+            SimpleNamespace(Count=len(self._rows[0])),
+        )
+        self.Worksheet = SimpleNamespace(Parent=SimpleNamespace(Application=SimpleNamespace(Hwnd=1)))
 
     def GetTypeInfo(self):
         return self

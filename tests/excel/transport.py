@@ -20,7 +20,9 @@ def to_python(value):
         if not more:
             return tuple(to_python(value.get([i])) for i in range(low, high + 1))
         left, right = more[0]
-        return tuple(tuple(to_python(value.get([i, j])) for j in range(left, right + 1)) for i in range(low, high + 1))
+        return tuple(
+            tuple(to_python(value.get([i, j])) for j in range(left, right + 1)) for i in range(low, high + 1)
+        )
     if isinstance(value, VBAErrorValue):
         return -2146828288 + value.number
     if value is MISSING:
@@ -39,7 +41,7 @@ def to_python(value):
 
 
 def to_vba(value):
-    """A value of Python as pywin32 hands it back, in a Variant; anything that pywin32 would refuse is an error here too."""
+    """A value of Python as pywin32 hands it back, in a Variant; what it would refuse is an error here too."""
     kind = type(value)
     if kind in (list, tuple):
         if value and type(value[0]) in (list, tuple):
@@ -62,12 +64,14 @@ def to_vba(value):
 
 
 def as_cell_value(result):
-    """What a cell would hold, in the values of the cell contract: rows for a block, ErrorValue for a true error."""
+    """What a cell would hold, as the cell contract has it: rows for a block, ErrorValue for an error."""
     if isinstance(result, VBAArray):
         if result.dimensions == 1:
             return [[as_cell_value(v) for v in result.items]]
         (low, high), (left, right) = result.bounds
-        return [[as_cell_value(result.get([i, j])) for j in range(left, right + 1)] for i in range(low, high + 1)]
+        return [
+            [as_cell_value(result.get([i, j])) for j in range(left, right + 1)] for i in range(low, high + 1)
+        ]
     if isinstance(result, VBAErrorValue):
         return ErrorValue(CODES[result.number])
     return result
