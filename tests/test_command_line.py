@@ -123,3 +123,32 @@ def test_demo(tmp_path):
     again = uffuncs("demo", "here", cwd=tmp_path)
     assert again.returncode == 2 and "--overwrite" in again.stderr
     assert uffuncs("demo", "here", "--overwrite", cwd=tmp_path).returncode == 0
+
+
+def test_doctor_tells_every_door_in_plain_words():
+    done = uffuncs("doctor")
+    assert done.returncode in (0, 1) and f"uffuncs {__version__} on Python" in done.stdout
+    assert "Excel" in done.stdout and "Calc" in done.stdout and "Traceback" not in done.stderr
+
+
+@pytest.mark.skipif(sys.platform == "win32", reason="there it would install")
+def test_install_excel_elsewhere_is_one_line():
+    done = uffuncs("install", "excel")
+    assert done.returncode == 2 and done.stderr.count("\n") == 1 and "Windows" in done.stderr
+
+
+def test_build_calc(tmp_path):
+    done = uffuncs("build", "calc", "-o", tmp_path / "new")
+    assert done.returncode == 0 and Path(done.stdout.strip()).suffix == ".oxt" and Path(done.stdout.strip()).exists()
+
+
+def test_build_excel(tmp_path):
+    pytest.importorskip("xlwings")
+    pytest.importorskip("pyopenvba")
+    done = uffuncs("build", "excel", "-o", tmp_path / "new")
+    assert done.returncode == 0 and [Path(line).exists() for line in done.stdout.split("\n")[:-1]] == [True, True]
+
+
+def test_an_unknown_door_is_refused():
+    done = uffuncs("install", "lotus")
+    assert done.returncode == 2 and "calc" in done.stderr and "Traceback" not in done.stderr

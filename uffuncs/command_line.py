@@ -1,8 +1,9 @@
-"""The command line: demo, recalc, functions. Everything heavy is loaded by the command that needs it."""
+"""The command line: demo, recalc, functions, add-ins. Everything heavy is loaded by the command that needs it."""
 
 from __future__ import annotations
 
 import sys
+from enum import Enum
 from pathlib import Path
 from typing import Annotated, Optional
 
@@ -81,7 +82,7 @@ def recalc(
     inputs: Annotated[list[Path], typer.Argument(metavar="IN.xlsx…", help="Workbooks to recalculate.")],
     output: Annotated[Optional[Path], typer.Option("-o", "--output", help="File, or folder for several workbooks.")] = None,
     in_place: Annotated[bool, typer.Option("--in-place", help="Write the results into the inputs themselves.")] = False,
-    engine: Annotated[str, typer.Option(help="What evaluates the formulas.")] = "formualizer",
+    engine: Annotated[str, typer.Option(help="What evaluates the formulas: formualizer, or calc for an installed LibreOffice.")] = "formualizer",
     most: Annotated[int, typer.Option(help="Error cells listed per workbook.")] = 20,
 ) -> None:
     """Recalculate workbooks without a spreadsheet program.
@@ -183,6 +184,76 @@ def functions(
         near = [*near_names("UF_" + wanted.upper().removeprefix("UF_")), *near_names(wanted, list(TOPICS))]
         hint = f"; did you mean {' or '.join(near)}?" if near else f"; topics: {', '.join(TOPICS)}"
         _fail(f"there is no function or topic '{wanted}'{hint}")
+
+
+class Door(str, Enum):
+    """Spreadsheet programs with an add-in of ours."""
+
+    calc = "calc"
+    excel = "excel"
+
+
+DoorArgument = Annotated[Door, typer.Argument(metavar="calc|excel", help="The spreadsheet program.")]
+
+
+def _door(name: Door):
+    """The door's module, and the exceptions by which it refuses."""
+    if name is Door.calc:
+        from . import calc
+
+        return calc, calc.OfficeProblem
+    from . import excel
+
+    return excel, excel.ExcelDoorError
+
+
+@app.command()
+def install(door: DoorArgument) -> None:
+    """Install the add-in of a spreadsheet program for this user."""
+    module, refusal = _door(door)
+    try:
+        print("\n".join(module.install()))
+    except refusal as error:
+        _fail(str(error))
+
+
+@app.command()
+def uninstall(door: DoorArgument) -> None:
+    """Remove the add-in of a spreadsheet program."""
+    module, refusal = _door(door)
+    try:
+        print("\n".join(module.uninstall()))
+    except refusal as error:
+        _fail(str(error))
+
+
+@app.command()
+def build(
+    door: DoorArgument,
+    output: Annotated[Path, typer.Option("-o", "--output", help="Folder for the files.")],
+) -> None:
+    """Write the files of an add-in into a folder, without installing them."""
+    module, refusal = _door(door)
+    try:
+        written = module.build(output)
+    except refusal as error:
+        _fail(str(error))
+    for path in [written] if isinstance(written, Path) else written:
+        print(path)
+
+
+@app.command()
+def doctor() -> None:
+    """Tell what is installed where, with which Python, and what is wrong."""
+    import platform
+
+    print(f"uffuncs {__version__} on Python {platform.python_version()}, {sys.executable}")
+    wrong = 0
+    for name in Door:
+        for finding in _door(name)[0].doctor():
+            print(f"{' ' if finding.good else '!'} {finding.text}")
+            wrong += not finding.good
+    raise typer.Exit(1 if wrong else CLEAN)
 
 
 if __name__ == "__main__":

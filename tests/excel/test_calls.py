@@ -126,6 +126,7 @@ def test_solving_and_uncertainty_take_further_cells(excel):
 def test_arguments_left_out_between_commas(excel):
     reason = excel.raw("UF_WHY", "UF_FLUX_DARCY", 2.0, MISSING, 5e12)
     assert reason == call("UF_WHY", ["UF_FLUX_DARCY", 2.0, None, 5e12]) and "blank" in reason
+    assert excel.library.server.cells == ("UF_FLUX_DARCY", 2.0, None, 5e12)
     solved = excel.raw("UF_SOLVE_FOR", "UF_FLUX_DARCY", "transmembrane_pressure", 50.0, MISSING, 1.0, 5e12)
     assert same(
         solved, call("UF_SOLVE_FOR", ["UF_FLUX_DARCY", "transmembrane_pressure", 50.0, None, 1.0, 5e12]), 0

@@ -83,7 +83,7 @@ class Server(VBAObject):
     def __init__(self):
         self.real = xlwings_of_windows().server
         self.failures = 0
-        self.calls = 0
+        self.calls, self.cells = 0, ()
 
     @method
     def CallUDF(self, module, name, cells):
@@ -91,7 +91,8 @@ class Server(VBAObject):
         if self.failures:
             self.failures -= 1
             raise error(462, "The remote server machine does not exist or is unavailable")
-        return to_vba(self.real.CallUDF(str(module), str(name), to_python(cells)))
+        self.cells = to_python(cells)
+        return to_vba(self.real.CallUDF(str(module), str(name), self.cells))
 
 
 class Workbench:
