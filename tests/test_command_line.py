@@ -150,5 +150,5 @@ def test_build_excel(tmp_path):
 
 
 def test_an_unknown_door_is_refused():
-    done = uffuncs("install", "lotus")
+    done = uffuncs("install", "abacus")
     assert done.returncode == 2 and "calc" in done.stderr and "Traceback" not in done.stderr
