@@ -68,6 +68,22 @@ def test_blank_elements_of_an_optional_range_take_the_default():
     assert call(DARCY, [1, 1, 5e12, [[5e12], [None]]]) == [[pytest.approx(36)], [pytest.approx(72)]]
 
 
+def test_a_blank_takes_a_default_that_the_function_works_out(why):
+    cells = [[[2], [2], ["x"]], [[1], [None], [1]]]
+    block = call("UF_TRANSMEMBRANE_PRESSURE", cells)
+    assert block[:2] == [[1.5], [2.0]] and block[2][0].code == "#VALUE!"
+    assert [row[0][:2] for row in why("UF_TRANSMEMBRANE_PRESSURE", *cells)] == ["ok", "ok", "UF"]
+
+
+def test_an_error_cell_is_named_in_the_reason(why):
+    assert why("UF_FLUX_DARCY", 1, ErrorValue("#DIV/0!"), 5e12) == "UF_FLUX_DARCY: viscosity is the error value #DIV/0!"
+    assert "viscosity is outside" in why("UF_FLUX_DARCY", 1, ErrorValue("#NUM!", "the viscosity is outside"), 5e12)
+
+
+def test_no_negative_zero():
+    assert str(call("UF_DIAVOLUMES", [1])) == "0.0"
+
+
 def test_broadcasting():
     assert darcy([[1], [2]], [[1, 2, 4]], 5e12) == [[pytest.approx(72 * p / m) for m in (1, 2, 4)] for p in (1, 2)]
     assert darcy([[1]]) == darcy(1), "a range of one cell counts as that cell"

@@ -135,6 +135,7 @@ def test_too_many_arguments(record):
 def test_why_answers_with_text(record):
     answer = call("UF_WHY", [record.worksheet_name, *example(record)])
     assert isinstance(answer, str) and answer.startswith(("ok", "caution: ")), answer
+    assert not answer.endswith("…"), "what is said must fit into a cell's note"
     refused = call("UF_WHY", [record.worksheet_name])
     assert record.worksheet_name in refused if record.minimum_cells else True
 

@@ -82,3 +82,48 @@ def test_convert_refuses(cells, word, why):
 def test_convert_is_its_own_inverse():
     for pair in [("degF", "degC"), ("gfd", "LMH"), ("kDa", "g/mol"), ("MGD", "m³/h"), ("psi", "bar")]:
         assert convert(convert(12.5, *pair), *reversed(pair)) == pytest.approx(12.5, rel=1e-9)
+
+
+@pytest.mark.parametrize("unit, si, scale", [
+    ("bbl", "m³", 42 * GALLON), ("lmh", "m/s", 1e-3 / 3600), ("L/m2h", "m/s", 1e-3 / 3600), ("kg/cm2", "Pa", 98066.5), ("kg/cm²", "Pa", 98066.5),
+    ("mH2O", "Pa", 9806.65), ("cmH2O", "Pa", 98.0665), ("inWC", "Pa", 249.08891), ("psid", "Pa", PSI), ("PSI", "Pa", PSI), ("Pa.s", "Pa·s", 1.0),
+    ("mPas", "Pa·s", 1e-3), ("LPM", "m³/s", 1e-3 / 60), ("cfm", "m³/s", FOOT**3 / 60), ("ppb", "-", 1e-9), ("‰", "-", 1e-3), ("mg/g", "-", 1e-3),
+    ("mL/mL", "-", 1.0), ("t", "kg", 1000.0), ("arcmin", "rad", 3.14159265358979 / 10800),
+])
+def test_everyday_spelling(unit, si, scale):
+    assert compile_unit(unit, si)[0] == pytest.approx(scale, rel=1e-9)
+
+
+@pytest.mark.parametrize("unit, si", [
+    ("deg", "-"), ("rad", "-"), ("pi", "-"), ("bit", "-"), ("turn", "-"), ("alpha", "-"), ("sr", "-"), ("%", "rad"), ("-", "rad"), ("rpm", "1/s"),
+    ("ton", "kg"), ("mPa", "Pa"), ("kg/cm2 a", "Pa"), ("psia", "Pa"),
+])
+def test_numbers_angles_and_slips_are_told_apart(unit, si):
+    with pytest.raises(InvalidInput):
+        compile_unit(unit, si)
+
+
+def test_temperatures_and_their_differences():
+    assert compile_unit("°C", "K", worksheet="°C difference") == (1.0, 0.0)
+    assert compile_unit("degF", "K", worksheet="°C difference") == (pytest.approx(5 / 9), 0.0)
+    assert call("UF_CONVERT", [25, "C", "F"]) == 77
+    assert call("UF_CONVERT", [10, "°C difference", "degF"]).code == "#VALUE!"
+    assert call("UF_CONVERT", [10, "°C difference", "K"]) == 10
+    assert call("UF_CONVERT", [1, "rpm", "Hz"]).code == "#VALUE!"
+    found = call("UF_SOLVE_FOR", ["UF_TEMPERATURE_RISE", "power", "10 °C", None, 100])
+    assert found == pytest.approx(call("UF_SOLVE_FOR", ["UF_TEMPERATURE_RISE", "power", 10, None, 100]))
+
+
+@pytest.mark.parametrize("text", [
+    "3 membranes replaced after integrity test failure, 12 May", "2 bar transmembrane pressure measured upstream, morning shift", "2 m**9**9**9",
+    "2 m2**9**9", "2 " + "a" * 5000, "2 " + "(" * 500, "2 bar according to the manufacturer's data sheet", "1 " + "m*" * 30,
+])
+def test_prose_and_powers_are_refused_at_once(text):
+    """Read in one pass: a text of any length takes no time to speak of (a slow reader would hang here for minutes)."""
+    assert call("UF_FLUX_DARCY", [text, 1, 5e12]).code == "#VALUE!"
+
+
+def test_the_reason_names_the_worksheet_unit():
+    assert "a unit like 'm/s'" in call("UF_VELOCITY", [1, "1 s"]).reason or "'m²'" in call("UF_VELOCITY", [1, "1 s"]).reason
+    assert "'L/(m²·h)'" in call("UF_FLOW_FROM_FLUX", ["1 s", 1]).reason
+    assert "'g/L'" in call("UF_OSMOTIC_VANT_HOFF", ["1 s", 70]).reason

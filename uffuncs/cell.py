@@ -13,7 +13,7 @@ import numpy as np
 
 from .declaration import Argument, Function, Tool
 from .errors import CellError, ErrorValue, InvalidInput, NoResult, NotAvailable, UffuncsError
-from .grids import Grid, grid
+from .grids import Grid, elements, grid
 from .reading import RANGES, flattened, is_blank, make_reader, unwrapped
 from .reasons import no_result_reason
 from .registry import find
@@ -78,7 +78,7 @@ class CompiledTool:
     def __call__(self, cells: Sequence) -> object:
         record = self.record
         _check_count(record, cells)
-        cells = [unwrapped(c) for c in cells]
+        cells = [c.tolist() if isinstance(c, np.ndarray) else c for c in map(unwrapped, cells)]
         cells += [None] * (len(record.arguments) - len(cells))
         for argument, cell in zip(record.arguments, cells):
             if argument.required and is_blank(cell):
@@ -142,7 +142,7 @@ class CompiledFunction:
             result = self.record.result_quantity(values).from_si(result)
         else:
             result = (result - self.offset) / self.scale
-        result = float(result)
+        result = float(result) + 0.0  # no negative zero
         if not math.isfinite(result):
             raise NoResult(no_result_reason(self.record, values))
         return result
@@ -156,11 +156,28 @@ class CompiledFunction:
     # --- ranges, element by element ------------------------------------------------------------------------------
 
     def block(self, cells: Sequence, columns: dict | None = None) -> list[list]:
+        if any(self._has_own_default(a, c) for a, c in zip(self.record.arguments, cells)):
+            return self._element_by_element(cells, columns or {})
         values, errors = self.arrays(cells, columns)
         rows = values.tolist()
         for (i, j), error in errors.items():
             rows[i][j] = error
         return rows
+
+    @staticmethod
+    def _has_own_default(argument: Argument, cell: object) -> bool:
+        """A range with blanks, for an argument whose default the function works out itself."""
+        return (not argument.required and argument.default is None and type(cell) in RANGES
+                and any(is_blank(v) for v in flattened(cell)))
+
+    def _element_by_element(self, cells: Sequence, columns: dict) -> list[list]:
+        def value(element: list):
+            try:
+                return self.scalar([columns[i] if i in columns else read(c) for i, (read, c) in enumerate(zip(self.readers, element))])
+            except UffuncsError as error:
+                return error.as_cell()
+
+        return [[value(element) for element in row] for row in elements(cells, whole=columns)]
 
     def arrays(self, cells: Sequence, columns: dict | None = None) -> tuple[np.ndarray, dict[tuple[int, int], ErrorValue]]:
         """Elementwise over ranges: the values in worksheet units, and the error of each bad element.
@@ -195,6 +212,7 @@ class CompiledFunction:
             self._pieces([f if g.single else f[keep] for f, g in zip(flat, grids)], grids, keep, out, failed)
         else:
             self._pieces(flat, grids, None, out, failed)
+        out += 0.0  # no negative zero
         bad = np.flatnonzero(~np.isfinite(out))
         for index in bad:
             errors.setdefault(divmod(int(index), shape[1]), failed.get(int(index), _NO_RESULT))
@@ -238,7 +256,7 @@ class CompiledFunction:
                         out[place] = self._body([v[n].item() if isinstance(v, np.ndarray) and not fixed else v
                                                  for v, fixed in zip(values, single)])
                     except UffuncsError as error:
-                        failed[int(place)] = error.as_cell()
+                        failed[int(place)] = ErrorValue(error.code, f"{self.name}: {error}")
 
     def _body(self, values: list) -> np.ndarray | float:
         with np.errstate(all="ignore"):

@@ -58,10 +58,12 @@ def demo(
     overwrite: Annotated[bool, typer.Option("--overwrite", help="Replace an earlier demo workbook.")] = False,
 ) -> None:
     """Build a plant's design workbook and print its key results."""
-    from .demo import build_and_recalculate
-
     from rich.table import Table
 
+    from .demo import build_and_recalculate
+
+    if folder.exists() and not folder.is_dir():
+        _fail(f"{folder} is a file; name a folder")
     try:
         path, results, report = build_and_recalculate(folder, overwrite)
     except FileExistsError as error:
@@ -83,7 +85,7 @@ def recalc(
     output: Annotated[Optional[Path], typer.Option("-o", "--output", help="File, or folder for several workbooks.")] = None,
     in_place: Annotated[bool, typer.Option("--in-place", help="Write the results into the inputs themselves.")] = False,
     engine: Annotated[str, typer.Option(help="What evaluates the formulas: formualizer, or calc for an installed LibreOffice.")] = "formualizer",
-    most: Annotated[int, typer.Option(help="Error cells listed per workbook.")] = 20,
+    most: Annotated[int, typer.Option(min=0, help="Error cells listed per workbook.")] = 20,
 ) -> None:
     """Recalculate workbooks without a spreadsheet program.
 

@@ -71,8 +71,6 @@ def _mixed_grid(argument: Argument, read: Callable, rows: Sequence[Sequence], wi
         for j in range(width):
             try:
                 value = read(row[j] if j < len(row) else None)
-                if value is None:  # an optional argument whose default the function works out itself
-                    raise InvalidInput(f"{argument.name} is blank in a range; fill it, or leave the argument out")
                 values[i, j] = q.from_si(value) if q is not None else value
             except UffuncsError as error:
                 errors[i, j] = error.as_cell()
@@ -95,3 +93,31 @@ def _outside(read: Callable, numbers: np.ndarray, q: Quantity) -> dict[tuple[int
         except UffuncsError as error:
             errors[int(i), int(j)] = error.as_cell()
     return errors
+
+
+def elements(cells: Sequence, whole=()) -> list[list[list]]:
+    """The cells of each element of a broadcast call, as rows; `whole` places are passed as they are.
+
+    Raises
+    ------
+    InvalidInput
+        The ranges do not fit together in shape.
+    """
+    grids = []
+    for i, value in enumerate(cells):
+        rows = [list(row) for row in value] if isinstance(value, RANGES) and i not in whole else None
+        height, width = (len(rows), max(map(len, rows))) if rows else (1, 1)
+        cell_grid = np.empty((height, width), object)
+        if rows is None:
+            cell_grid[0, 0] = value
+        for r, row in enumerate(rows or ()):
+            for c in range(width):
+                cell_grid[r, c] = row[c] if c < len(row) else None
+        grids.append(cell_grid)
+    try:
+        grids = np.broadcast_arrays(*grids)
+    except ValueError:
+        shapes = ", ".join(f"{g.shape[0]}×{g.shape[1]}" for g in grids if g.shape != (1, 1))
+        raise InvalidInput(f"the ranges do not fit together in shape: {shapes}") from None
+    rows, columns = grids[0].shape
+    return [[[g[r, c] for g in grids] for c in range(columns)] for r in range(rows)]

@@ -58,6 +58,8 @@ VOCABULARY: dict[str, Quantity] = {}
 
 
 def _define(name, symbol, unit, low, high, meaning, **flags):
+    if name in VOCABULARY:
+        raise ValueError(f"{name} is in the vocabulary already")
     VOCABULARY[name] = Quantity(name, symbol, unit, low, high, meaning, **flags)
 
 
@@ -190,8 +192,7 @@ _define("fraction", "x", "-", 0.001, 1, "Share of the limiting flux")
 # --- flux -------------------------------------------------------------------------------------------------------
 _define("flux", "J", LMH, 0, 1e5, "Permeate flow per membrane area")
 _define_alike(
-    "clean_flux fouled_flux rinsed_flux cleaned_flux initial_flux final_flux backwash_flux normalized_flux limiting_flux "
-    "permeate_flux net_flux",
+    "clean_flux fouled_flux rinsed_flux cleaned_flux initial_flux final_flux backwash_flux limiting_flux net_flux",
     "flux",
     clean_flux="J_0|Water flux of the clean membrane",
     fouled_flux="J_f|Water flux of the fouled membrane",
@@ -200,9 +201,7 @@ _define_alike(
     initial_flux="J_0|Flux at the start",
     final_flux="J_f|Flux at the end",
     backwash_flux="J_b|Backwash flow per membrane area",
-    normalized_flux="J/J_0|Flux over its first value",
     limiting_flux="J_lim|Flux that more pressure does not raise",
-    permeate_flux="J|Permeate flow per membrane area",
     net_flux="J_net|Flux after backwash and downtime",
 )
 _define("normalized_flux", "J/J_0", "-", 1e-6, 100, "Flux at one pressure and temperature over its first value")

@@ -51,7 +51,7 @@ def make_reader(function: str, argument: Argument) -> Callable:
         if unit in ("", q.unit) and not q.absolute:
             return checked(number, cell)
         try:
-            unit_scale, unit_offset = compile_unit(unit or q.unit, q.si_unit, q.absolute)
+            unit_scale, unit_offset = compile_unit(unit or q.unit, q.si_unit, q.absolute, q.unit)
         except InvalidInput as error:
             raise InvalidInput(f"{name}: {error}") from None
         value = unit_scale * number + unit_offset
@@ -67,7 +67,7 @@ def make_reader(function: str, argument: Argument) -> Callable:
                 raise InvalidInput(f"{name} is blank; give a number in {q.unit}, or a text such as '1 {q.unit}'")
             return default
         if isinstance(cell, ErrorValue):
-            raise CellError(cell)
+            raise _passed_on(name, cell)
         if isinstance(cell, (bool, np.bool_)):
             raise InvalidInput(f"{name} is {str(bool(cell)).upper()}; give a number in {q.unit}")
         if isinstance(cell, str):
@@ -95,7 +95,7 @@ def _text_reader(function: str, argument: Argument) -> Callable:
                 raise InvalidInput(f"{name} is blank; give {_listed(argument)}")
             return argument.default
         if isinstance(cell, ErrorValue):
-            raise CellError(cell)
+            raise _passed_on(name, cell)
         if isinstance(cell, (bool, np.bool_)):
             raise InvalidInput(f"{name} is {str(bool(cell)).upper()}; give {_listed(argument)}")
         if not isinstance(cell, (str, int, float)):
@@ -108,6 +108,11 @@ def _text_reader(function: str, argument: Argument) -> Callable:
         return text
 
     return read
+
+
+def _passed_on(name: str, cell: ErrorValue) -> CellError:
+    """An error cell comes out as it went in; its own reason, where it has one, says more than its place."""
+    return CellError(cell if cell.reason else ErrorValue(cell.code, f"{name} is the error value {cell.code}"))
 
 
 def _listed(argument: Argument) -> str:

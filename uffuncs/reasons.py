@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 
-from .declaration import Fitted, Function, Rule
+from .declaration import Argument, Fitted, Function, Rule
 
 
 def no_result_reason(record: Function, values: Sequence) -> str:
@@ -25,9 +25,12 @@ def cautions(record: Function, values: Sequence, result: object = None) -> list[
     for fitted in record.fitted:
         found += filter(None, [_outside_fitted(record, fitted, values, result)])
     for argument, value in zip(record.arguments, values):
-        if argument.kind == "number" and not argument.required and _is_zero(value) and not _is_zero(argument.default):
-            if argument.quantity.offset == 0:
-                found.append(f"{argument.name} is exactly 0, not its default {argument.default_text}: a blank cell in Calc?")
+        if argument.kind == "number" and not argument.required and _is_zero(argument, value) and not _is_zero(argument, argument.default):
+            found.append(f"{argument.name} is exactly 0, not its default {argument.default_text}: a blank cell in Calc?")
+    if isinstance(result, (int, float)) and len(record.results) == 1 and not record.block:
+        q = record.results[0]
+        if not q.low <= q.from_si(result) <= q.high:
+            found.append(f"the result {q.shown(result)} lies outside {q.bounds_text}, the span of its kind; check the arguments")
     return found
 
 
@@ -37,8 +40,8 @@ def remarks(record: Function, values: Sequence, result: object = None) -> list[s
             if _holds(rule.when, rule.names, record, values, result)]
 
 
-def _is_zero(value: object) -> bool:
-    return isinstance(value, (int, float)) and value == 0
+def _is_zero(argument: Argument, value: object) -> bool:
+    return isinstance(value, (int, float)) and argument.quantity.from_si(value) == 0
 
 
 def _outside_fitted(record: Function, fitted: Fitted, values: Sequence, result: object) -> str:

@@ -93,8 +93,8 @@ def limit_texts(record: Record) -> list[str]:
     if isinstance(record, Tool):
         return []
     return [*(fitted_text(record, f) for f in record.fitted),
-            *(f"#NUM! where {plain_rule(r.text)}" for r in record.refuses),
-            *(f"Caution where {plain_rule(r.text)}" for r in record.cautions)]
+            *(f"No result (#NUM!): {plain_rule(r.text)}" for r in record.refuses),
+            *(f"Caution: {plain_rule(r.text)}" for r in record.cautions)]
 
 
 def show_table(console, topic: str) -> None:

@@ -81,25 +81,46 @@ WORKSHEET_UNITS: dict[str, tuple[str, float, float]] = {
     "money/year": ("money/s", 1.0 / YEAR, 0.0),
 }
 
-#: Spellings of the trade that pint does not know, or reads as something else.
+#: Spellings of the trade that pint does not know.
 TRADE_DEFINITIONS = (
-    "LMH = liter / meter**2 / hour",
+    "LMH = liter / meter**2 / hour = _ = lmh",
     "gfd = gallon / foot**2 / day = _ = GFD",
     "gpm = gallon / minute = _ = GPM",
     "gpd = gallon / day = _ = GPD",
     "MGD = 1e6 * gallon / day = _ = mgd",
     "MLD = 1e6 * liter / day",
+    "LPM = liter / minute = _ = lpm",
+    "cfm = foot**3 / minute = _ = CFM",
+    "water_column = 9806.65 * pascal / meter",  # conventional
+    "ppb = 1e-9",
+    "money = [money]",
 )
 
-_PRESSURE = r"(?:k|m|M|h)?(?:Pa|bar|psi|atm)"
+#: Spellings that pint takes for something else, or does not take. A dalton is a molar mass, never the mass of a molecule.
+_OTHERWISE = {
+    "Da": "(g/mol)", "kDa": "(kg/mol)", "MDa": "(Mg/mol)", "mil": "thou", "Å": "angstrom", "\u212b": "angstrom",
+    "bbl": "oil_barrel", "barrel": "oil_barrel", "PSI": "psi", "KPA": "kPa", "BAR": "bar", "psid": "psi", "mPas": "mPa*s",
+    "Pa.s": "Pa*s", "mPa.s": "mPa*s", "L/m2h": "L/m**2/h", "ºC": "degC", "℃": "degC", "℉": "degF", "Celsius": "degC",
+    "Fahrenheit": "degF", "‰": "permille",
+    **{f"{length}{water}": f"({length}*water_column)" for length in ("mm", "cm", "m", "in", "ft") for water in ("H2O", "WC")},
+}
+_OTHERWISE_FOUND = re.compile("|".join(rf"(?<![A-Za-z]){re.escape(k)}(?![A-Za-z])" for k in sorted(_OTHERWISE, key=len, reverse=True)))
+_AMBIGUOUS = {"ton": "write t for 1000 kg, short_ton or long_ton", "tons": "write t for 1000 kg, short_ton or long_ton"}
+#: Numbers that stand for themselves; every other unit without a dimension is an angle, a count or a constant.
+_PURE = {"percent", "permille", "ppm", "ppb", "dimensionless"}
+_ANGLES = {"degree", "radian", "arcminute", "arcsecond", "turn", "grade", "revolution"}
+_TURNING = {"revolutions_per_minute", "revolutions_per_second"}
+
+_PRESSURE = r"(?:k|m|M|h)?(?:Pa|bar|psi|atm)|kgf?/cm(?:2|²|\^2)"
 _GAUGE = re.compile(rf"({_PRESSURE})\s*(?:g|\(g\)|gauge)", re.IGNORECASE)
 _ABSOLUTE = re.compile(rf"({_PRESSURE})\s*(?:a|\(a\)|abs|absolute)", re.IGNORECASE)
+_KILOGRAM_FORCE = re.compile(r"kgf?/cm(?:2|²|\^2)")
 _SUPERSCRIPTS = str.maketrans("⁰¹²³⁴⁵⁶⁷⁸⁹⁻", "0123456789-")
 _SUPERSCRIPT_RUN = re.compile(r"⁻?[⁰¹²³⁴⁵⁶⁷⁸⁹]+")
-#: Spellings that pint takes for something else. A dalton is a molar mass here, never the mass of one molecule.
-_OTHERWISE = {"Da": "(g/mol)", "kDa": "(kg/mol)", "MDa": "(Mg/mol)", "mil": "thou", "Å": "angstrom", "\u212b": "angstrom"}
-_OTHERWISE_FOUND = re.compile(r"\b[kM]?Da\b|\bmil\b|[Å\u212b]")
 _PLAIN_EXPONENT = re.compile(r"(?<=[A-Za-zµ°])(-?\d)(?![\dA-Za-z])")
+#: One piece of a unit: nothing that a parser could take for code, no power of more than one digit.
+_TOKEN = re.compile(r"[A-Za-zµΩ_]+|(?:\*\*|\^)-?\d(?!\d)|[*/()]|\s+|1(?=\s*/)")
+_LONGEST = 60
 
 
 def worksheet_unit(text: str) -> tuple[str, float, float]:
@@ -108,7 +129,7 @@ def worksheet_unit(text: str) -> tuple[str, float, float]:
 
 
 @lru_cache(maxsize=4096)
-def compile_unit(text: str, si_unit: str, absolute: bool = False) -> tuple[float, float]:
+def compile_unit(text: str, si_unit: str, absolute: bool = False, worksheet: str = "") -> tuple[float, float]:
     """(scale, offset) from a unit text to an SI unit.
 
     Parameters
@@ -119,6 +140,8 @@ def compile_unit(text: str, si_unit: str, absolute: bool = False) -> tuple[float
         The SI unit wanted, as spelled in the table of worksheet units.
     absolute : bool
         Whether the quantity is an absolute pressure; all other pressures are gauge pressures or differences.
+    worksheet : str
+        The worksheet unit, for the reason of a refusal; where it is a difference, so is the text.
 
     Raises
     ------
@@ -127,23 +150,29 @@ def compile_unit(text: str, si_unit: str, absolute: bool = False) -> tuple[float
     """
     text = text.strip()
     known = WORKSHEET_UNITS.get(text)
+    difference = worksheet == "°C difference"
     if known is not None and known[0] == si_unit and not (si_unit == "Pa" and absolute):
-        return known[1], known[2]
+        return known[1], 0.0 if difference else known[2]
+    if "ⁿ" in si_unit:
+        raise InvalidInput(f"give a plain number in {worksheet or si_unit}: its unit depends on an exponent")
     if si_unit == "Pa":
         text = _pressure_reference(text, absolute)
-    if si_unit == "K" and text in ("C", "F"):
-        text = "deg" + text
+    if si_unit == "K":
+        text = _temperature(text)
     scale, offset = _to_base(text)
-    si_scale, _ = _to_base(si_unit)
-    if _dimension(text) != _dimension(si_unit):
-        raise InvalidInput(f"the unit '{text}' does not fit; give a unit like '{_readable(si_unit)}'")
-    return scale / si_scale, offset
+    kind = "angle" if si_unit == "rad" else "number"
+    if _dimension(text) != _dimension(si_unit) or _pure_kind(text) not in ("", kind):
+        raise InvalidInput(f"the unit '{text[:40]}' does not fit; give a unit like '{worksheet or si_unit}'")
+    if si_unit == "rad" and _pure_kind(text) != "angle":
+        raise InvalidInput(f"the unit '{text[:40]}' is no angle; give degrees, for example '30 deg'")
+    return scale / _to_base(si_unit)[0], 0.0 if difference else offset
 
 
 def convert(value: float, from_unit: str, to_unit: str) -> float:
     """A number in one unit, expressed in another of the same dimension.
 
-    Gauge and absolute pressures are not mixed: the difference is the atmospheric pressure of the place.
+    Gauge and absolute pressures are not mixed: the difference is the atmospheric pressure of the place. Nor are temperatures
+    and temperature differences.
 
     Raises
     ------
@@ -154,15 +183,46 @@ def convert(value: float, from_unit: str, to_unit: str) -> float:
     (gauge_in, absolute_in), (gauge_out, absolute_out) = pressures
     if (gauge_in and absolute_out) or (absolute_in and gauge_out):
         raise InvalidInput(f"'{from_unit}' and '{to_unit}' differ by the atmospheric pressure; add or subtract it")
-    plain = [(g or a)[1] if (g or a) else u for (g, a), u in zip(pressures, (from_unit, to_unit))]
-    for unit in plain:
-        _to_base(unit)
-    if _dimension(plain[0]) != _dimension(plain[1]):
-        raise InvalidInput(f"'{from_unit}' and '{to_unit}' measure different things")
+    plain = [(g or a)[1] if (g or a) else u.strip() for (g, a), u in zip(pressures, (from_unit, to_unit))]
+    if any(u in _TEMPERATURES for u in plain):
+        plain = [_temperature(u) for u in plain]
+    if any(_dimension_of_pressure(u) for u in plain):
+        plain = [_KILOGRAM_FORCE.sub("kgf/cm**2", u) for u in plain]
     (scale_in, offset_in), (scale_out, offset_out) = map(_to_base, plain)
+    if _dimension(plain[0]) != _dimension(plain[1]) or _pure_kind(plain[0]) != _pure_kind(plain[1]):
+        raise InvalidInput(f"'{from_unit}' and '{to_unit}' measure different things")
+    if (offset_in and _is_difference(plain[1])) or (offset_out and _is_difference(plain[0])):
+        raise InvalidInput(f"of '{from_unit}' and '{to_unit}' one is a temperature, the other a difference of temperatures")
     result = (scale_in * value + offset_in - offset_out) / scale_out
     # Zero points are far away on the kelvin scale: nine decimals of a temperature are all that a float holds of it.
     return round(result, 9) if offset_in or offset_out else result
+
+
+_TEMPERATURES = {"C": "degC", "F": "degF"}
+
+
+def _temperature(text: str) -> str:
+    return _TEMPERATURES.get(text, text)
+
+
+def _dimension_of_pressure(text: str) -> bool:
+    return not _KILOGRAM_FORCE.fullmatch(text) and _dimension(text) == _dimension("Pa")
+
+
+def _is_difference(text: str) -> bool:
+    return "delta_" in str(_parsed(text))
+
+
+@lru_cache(maxsize=4096)
+def _pure_kind(text: str) -> str:
+    """What a unit without a dimension, or a part of one, is: "angle", "number", "other"; "" where all parts have dimensions."""
+    registry, unit = _registry(), _parsed(text)
+    if _TURNING & set(unit._units):
+        return "angle"
+    bare = {name for name in unit._units if registry.Unit(name).dimensionless}
+    if not bare:
+        return "number" if unit.dimensionless else ""
+    return "angle" if bare <= _ANGLES else "number" if bare <= _PURE else "other"
 
 
 def known_unit(text: str) -> None:
@@ -174,23 +234,21 @@ def known_unit(text: str) -> None:
         An unknown unit.
     """
     text = text.strip()
-    if text not in WORKSHEET_UNITS:
+    if text not in WORKSHEET_UNITS and text not in _TEMPERATURES:
         pressure = _GAUGE.fullmatch(text) or _ABSOLUTE.fullmatch(text)
         _to_base(pressure[1] if pressure else text)
 
 
 def _pressure_reference(text: str, absolute: bool) -> str:
     gauge, is_absolute = _GAUGE.fullmatch(text), _ABSOLUTE.fullmatch(text)
-    if absolute and gauge:
+    if text == "mPa":
+        raise InvalidInput("'mPa' is a millipascal; did you mean MPa?")
+    if absolute and (gauge or text == "psid"):
         raise InvalidInput(f"'{text}' is a gauge pressure; give an absolute pressure, for example '1.013 bara'")
     if not absolute and is_absolute:
         raise InvalidInput(f"'{text}' is an absolute pressure; give a gauge pressure or a difference, for example '2 barg'")
-    return (gauge or is_absolute)[1] if (gauge or is_absolute) else text
-
-
-def _readable(si_unit: str) -> str:
-    """The worksheet unit for an SI unit, for messages."""
-    return next((unit for unit, (si, _, _) in WORKSHEET_UNITS.items() if si == si_unit), si_unit)
+    plain = (gauge or is_absolute)[1] if (gauge or is_absolute) else text
+    return _KILOGRAM_FORCE.sub("kgf/cm**2", plain)
 
 
 def _plain(text: str) -> str:
@@ -211,7 +269,6 @@ def _registry():
     registry = pint.UnitRegistry(on_redefinition="ignore")
     for line in TRADE_DEFINITIONS:
         registry.define(line)
-    registry.define("money = [money]")
     return registry
 
 
@@ -220,7 +277,9 @@ def _parsed(text: str):
     """pint's unit for a text; every way in which pint refuses a text is one InvalidInput."""
     import pint
 
-    if not _PERMITTED.fullmatch(_plain(text)):
+    if text in _AMBIGUOUS:
+        raise InvalidInput(f"'{text}' has several meanings; {_AMBIGUOUS[text]}")
+    if not _is_unit(text):
         raise InvalidInput(f"'{text[:40]}' is not a unit")
     try:
         return _registry().Unit(_plain(text))
@@ -230,8 +289,20 @@ def _parsed(text: str):
         raise InvalidInput(f"'{text[:40]}' is not a unit") from None
 
 
-#: Letters, digits and the operators of a unit: nothing that a parser could take for code, no huge power.
-_PERMITTED = re.compile(r"(?:[A-Za-zµΩ_]+|[*/() ]|\*\*-?\d\b|1(?=[/ ])|\^-?\d\b){1,60}")
+def _is_unit(text: str) -> bool:
+    """Whether a text is made of the pieces of a unit: read in one pass, so that no text takes long."""
+    if len(text) > _LONGEST:
+        return False
+    plain, at, power = _plain(text), 0, False
+    while at < len(plain):
+        token = _TOKEN.match(plain, at)
+        if token is None:
+            return False
+        is_power = token[0].startswith(("**", "^"))
+        if is_power and power:
+            return False  # a tower of powers
+        at, power = token.end(), is_power
+    return True
 
 
 @lru_cache(maxsize=4096)

@@ -15,16 +15,19 @@ from openpyxl.worksheet.formula import ArrayFormula
 from openpyxl.worksheet.hyperlink import Hyperlink
 
 from uffuncs.cell import call
-from uffuncs.check_values import checks_of, expected
+from uffuncs.check_values import as_cell, checks_of, expected
 from uffuncs.reference import example_cells, limit_texts, meaning_text, result_text
 from uffuncs.registry import functions
 
-from .layout import save
+from .layout import save, write_with_values
 
 TITLES = ["Argument", "Example", "Unit", "Lowest", "Highest", "Default", "Meaning"]
 WIDTHS = [30, 26, 18, 14, 14, 16, 92]
 #: Where the ranges and the blocks stand, to the right of the text.
 RANGES = 9
+#: What a checked value is called, by its kind.
+KINDS = {"printed": "Published value", "library": "Value of a general library", "derived": "Value derived from the source's equation",
+         "memory": "Value from memory", "practice": "Common practice, no source", "regression": "Earlier output"}
 CAUTIONED = {"integrity": "Direct integrity results and removal credit are set by the local regulator and by licensed practice; "
                           "this is a calculation aid."}
 
@@ -123,7 +126,7 @@ def _function(sheet, row: int, record) -> int:
 def _result(sheet, row: int, record, cells: list, formula: str, column: int) -> int:
     """The live formula, and its published value beside it."""
     found = checks_of(record.worksheet_name)
-    result = call(record.worksheet_name, [_cell(c) for c in cells])
+    result = call(record.worksheet_name, [as_cell(c) for c in cells])
     row += 1
     sheet.cell(row, 1, "Formula").style = "Explanatory Text"
     sheet.cell(row, 2, formula[1:]).style = "Explanatory Text"
@@ -151,18 +154,18 @@ def _result(sheet, row: int, record, cells: list, formula: str, column: int) -> 
     sheet[live].style = "Output"
     sheet[live].alignment = Alignment(horizontal="right")
     if found:
-        row = _check(sheet, row, found[0], live)
+        row = _check(sheet, row, found[0], live, isinstance(result, str))
     return row
 
 
-def _check(sheet, row: int, check, live: str) -> int:
+def _check(sheet, row: int, check, live: str, is_text: bool) -> int:
     """Printed value, difference, what rounding allows, verdict, source."""
-    printed, tolerance = expected(check)
+    printed, tolerance = expected(check, is_text)
     first = row + 1
-    sheet.cell(first, 1, "Published value")
+    sheet.cell(first, 1, KINDS[check.kind])
     sheet.cell(first, 2, printed if isinstance(printed, (float, str)) else str(printed)).style = "Input"
-    sheet.cell(first, 7, f"printed as {check.expected}; {check.kind}; {check.source}{', ' + check.place if check.place else ''}")
-    rows = [("Published value", None)]
+    sheet.cell(first, 7, f"{check.expected}; {check.source}{', ' + check.place if check.place else ''}")
+    rows = [("", None)]
     if isinstance(printed, float):
         rows += [("Difference", f"={live}-B{first}"), ("Allowed by the printed digits", tolerance),
                  ("Within the printed digits?", f'=IF(ABS(B{first + 1})<=B{first + 2}*(1+1E-9)+1E-14*ABS(B{first}),"yes","no")')]
@@ -179,23 +182,5 @@ def _check(sheet, row: int, check, live: str) -> int:
     return first + len(rows) - 1
 
 
-def _cell(argument: object) -> object:
-    if isinstance(argument, list):
-        return [[None if v == "" else v for v in (r if isinstance(r, list) else [r])] for r in argument]
-    return None if argument == "" else argument
-
-
-def write_with_values(path: Path) -> None:
-    """Build and recalculate; the finished workbook is moved into place."""
-    import tempfile
-
-    from uffuncs.headless import recalculate
-
-    with tempfile.TemporaryDirectory() as scratch:
-        bare = Path(scratch) / path.name
-        build(bare)
-        recalculate(bare, path)
-
-
 if __name__ == "__main__":
-    write_with_values(Path(__file__).with_suffix(".xlsx"))
+    write_with_values(build, Path(__file__).with_suffix(".xlsx"))

@@ -160,3 +160,13 @@ def save(workbook: Workbook, path: Path) -> None:
     except BaseException:
         os.unlink(name)
         raise
+
+
+def write_with_values(build, path: Path) -> None:
+    """Build a workbook and recalculate it; the finished file is moved into place."""
+    from uffuncs.headless import recalculate
+
+    with tempfile.TemporaryDirectory() as scratch:
+        bare = Path(scratch) / path.name
+        build(bare)
+        recalculate(bare, path)

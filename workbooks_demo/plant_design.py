@@ -17,7 +17,7 @@ from openpyxl.worksheet.datavalidation import DataValidation
 
 from uffuncs.cell import call
 
-from .layout import Page, add_series, column_range, save, scatter
+from .layout import Page, add_series, column_range, save, scatter, write_with_values
 
 STAGES = 3
 PRESSURES = (0.25, 0.5, 0.75, 1, 1.25, 1.5, 1.75, 2, 2.5, 3, 3.5, 4, 5, 6)
@@ -386,22 +386,30 @@ def questions(workbook: Workbook) -> None:
     page.output("Transmembrane pressure", "Δp_tm", f'=UF_SOLVE_FOR("UF_FLUX_OSMOTIC","transmembrane_pressure",wanted_flux,,{osmotic})',
                 "bar", "solved within the bounds of the argument", "wanted_pressure", "0.000")
     page.check("The flux comes back?", f'=IF(ABS(UF_FLUX_OSMOTIC(wanted_pressure,{osmotic})-UF_CONVERT(60,"gfd","LMH"))<0.0000001,"ok","differs")')
-    page.section("How far does the trial's uncertainty spread the area?")
-    page.calculated("Mass-transfer coefficient with its uncertainty", "k", '=UF_QUANTITY(ROUND(trial_k,3),"L/(m²·h)",ROUND(trial_k_error,3))', "",
-                    "standard error of the fit", "uncertain_k", "General")
-    page.calculated("Gel concentration with its uncertainty", "C_g", '=UF_QUANTITY(ROUND(trial_gel,2),"g/L",ROUND(trial_gel_error,2))', "", "",
-                    "uncertain_gel", "General")
+    page.section("How far do the uncertainties spread the flux, and the area?")
+    page.calculated("Pressure", "Δp_tm", '=UF_QUANTITY(ROUND(operating_pressure,3),"bar",0.1)', "", "two gauges of 0.07 bar each", "uncertain_pressure",
+                    "General")
+    page.calculated("Permeability, fouled", "L_p", '=UF_QUANTITY(ROUND(permeability,2),"L/(m²·h·bar)",ROUND(0.08*permeability,2))', "",
+                    "8 %, cleaning to cleaning", "uncertain_permeability", "General")
+    page.calculated("Mass-transfer coefficient", "k", '=UF_QUANTITY(ROUND(transfer_coefficient,2),"L/(m²·h)",ROUND(0.15*transfer_coefficient,2))', "",
+                    "15 %, the scatter of the correlation", "uncertain_k", "General")
     first = page.row
-    for label, unit, fmt in (
-        ("Area of one batch stage for 1 m³ in 6 min: mean", "m²", "0.00"), ("Standard uncertainty", "m²", "0.00"), ("2.5 % point", "m²", "0.00"),
-        ("97.5 % point", "m²", "0.00"), *((f"Share of the variance: {name}", "-", "0 %") for name in (
-            "feed volume", "feed concentration", "concentration factor", "time", "mass-transfer coefficient", "gel concentration")),
-    ):
-        page.calculated(label, "", None, unit, "", "", fmt)
-    page.array(f"C{first}", f"C{page.row - 1}", '=TRANSPOSE(UF_UNCERTAINTY("UF_BATCH_AREA",1,feed_concentration,'
-               "final_concentration/feed_concentration,0.1,uncertain_k,uncertain_gel))", "0.00")
+    for label, unit in (("Flux: mean", "L/(m²·h)"), ("Standard uncertainty", "L/(m²·h)"), ("2.5 % point", "L/(m²·h)"), ("97.5 % point", "L/(m²·h)"),
+                        ("Share of the variance: pressure", "-"), ("Share of the variance: permeability", "-"),
+                        ("Share of the variance: mass-transfer coefficient", "-")):
+        page.calculated(label, "", None, unit)
+    page.array(f"C{first}", f"C{page.row - 1}", '=TRANSPOSE(UF_UNCERTAINTY("UF_FLUX_OSMOTIC",uncertain_pressure,uncertain_permeability,uncertain_k,'
+               "mean_concentration,osmotic_1,osmotic_2,osmotic_3,intrinsic_rejection))", "0.00")
     for row in range(first + 4, page.row):
         page.sheet[f"C{row}"].number_format = "0 %"
+    page.calculated("Mean flux of the cascade, with the same relative spread", "J", f'=UF_QUANTITY(ROUND(mean_flux,2),"L/(m²·h)",'
+                    f"ROUND(mean_flux*C{first + 1}/C{first},2))", "", "", "uncertain_flux", "General")
+    first = page.row
+    for label in ("Area: mean", "Standard uncertainty", "2.5 % point", "97.5 % point"):
+        page.calculated(label, "A" if label == "Area: mean" else "", None, "m²")
+    page.array(f"C{first}", f"C{page.row - 1}", '=TRANSPOSE(UF_UNCERTAINTY("UF_AREA",total_permeate,uncertain_flux))', "0.0")
+    page.text("The arguments count as independent. k and C_g of one fit are not: a high k goes with a low C_g, and to spread them apart would "
+              "show too much.", "Explanatory Text")
     page.section("Do a bidder's numbers hold?")
     for label, claimed, calculated, sense, unit in (
         ("Mean flux of the cascade, claimed", "75 gfd", "mean_flux", "at most", "L/(m²·h)"),
@@ -472,17 +480,5 @@ def notes(workbook: Workbook) -> None:
         page.row += 1
 
 
-def write_with_values(path: Path) -> None:
-    """Build and recalculate; the finished workbook is moved into place."""
-    import tempfile
-
-    from uffuncs.headless import recalculate
-
-    with tempfile.TemporaryDirectory() as scratch:
-        bare = Path(scratch) / path.name
-        build(bare)
-        recalculate(bare, path)
-
-
 if __name__ == "__main__":
-    write_with_values(Path(__file__).with_suffix(".xlsx"))
+    write_with_values(build, Path(__file__).with_suffix(".xlsx"))

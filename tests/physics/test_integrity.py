@@ -47,7 +47,8 @@ def test_the_list_of_sound_calls_is_complete():
 def test_every_function_carries_the_notice(record):
     assert i.NOTICE[1:] in record.notes and i.NOTICE[1:] in record.python.__doc__
     answer = call("UF_WHY", [record.worksheet_name, *SOUND[record.worksheet_name]])
-    assert answer.startswith(f"ok: {i.NOTICE}")
+    assert answer.startswith("ok: ") and answer.endswith(i.NOTICE)
+    assert i.IN_SHORT in record.summary
 
 
 def test_no_default_raises_a_credit():

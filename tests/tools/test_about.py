@@ -29,6 +29,12 @@ def test_why_cautions_of_a_zero_where_the_default_is_another(why):
     assert why("UF_FLUX_DARCY", 1, 1, 5e12, 0, 0, 0) == "ok"
 
 
+def test_why_cautions_of_a_blank_temperature_and_of_an_absurd_result(why):
+    assert "reference_temperature is exactly 0" in why("UF_VISCOSITY_RATIO", 25, 0)
+    assert why("UF_OSMOTIC_VANT_HOFF", 50, 66, 0).startswith("caution: temperature is exactly 0")
+    assert "lies outside" in why("UF_VISCOSITY_ROSS_MINTON", 330, 6, 0.5)
+
+
 def test_why_of_a_range_is_a_block_of_texts(why):
     block = why("UF_FLUX_DARCY", [[1], ["x"], [-1]], 1, 5e12)
     assert block[0] == ["ok"] and "'x'" in block[1][0] and "0 to 200 bar" in block[2][0]

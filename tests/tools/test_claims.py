@@ -22,13 +22,20 @@ def test_verdict(cells, verdict):
     assert claim(*cells).replace("+0.0", "").replace("−0.0", "") == verdict.replace("+0.0", "").replace("−0.0", "")
 
 
+def test_units_with_a_zero_point_and_gauge_pressures():
+    assert claim("77 degF", 77, 0.1, "equal", "degF") == claim("25 degC", 77, 0.001, "equal", "degF") == "holds: +0.0 %"
+    assert claim("30 psig", "2.0684 bar", 0.001, "equal", "barg") == "holds: +0.0 %"
+    assert claim("30 psia", 2, 0.1, "equal", "barg").code == "#VALUE!"
+    assert claim(float("nan"), 1).code == "#VALUE!"
+
+
 def test_ranges():
     block = claim([[100], [120], [None], [True]], 100)
     assert block[0] == ["holds: +0.0 %"] and block[1] == ["above: +20.0 %"] and block[2][0].code == block[3][0].code == "#VALUE!"
 
 
 @pytest.mark.parametrize("cells, code, words", [
-    ((1, 0), "#NUM!", "is 0"), (("20 gfd", 30), "#VALUE!", "name a unit"), (("20 gfd", 30, 0.1, "equal", "bar"), "#VALUE!", "does not fit"),
+    ((1, 0), "#NUM!", "is 0"), (("20 gfd", 30), "#VALUE!", "name a unit"), (("20 gfd", 30, 0.1, "equal", "bar"), "#VALUE!", "measure different things"),
     ((1, 1, -0.1), "#VALUE!", "0 to 10"), ((1, 1, 0.1, "roughly"), "#VALUE!", "one of"), ((1, 1, 0.1, "equal", "barz"), "#VALUE!", "unknown"),
     ((None, 1), "#VALUE!", "blank"), ((ErrorValue("#N/A"), 1), "#N/A", ""), (("about 5", 5), "#VALUE!", "not a number"),
 ])

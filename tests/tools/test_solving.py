@@ -109,6 +109,13 @@ def test_cautions_of_the_function_at_the_solution(why):
     assert why("UF_SOLVE_FOR", "UF_WATER_VISCOSITY", "temperature", 1.0) == "ok"
 
 
+def test_whole_numbers_name_their_neighbours(why):
+    reason = why("UF_SOLVE_FOR", "UF_STAGES_AREA", "stages", 100, 10, 5, 50, None, 50, 200)
+    assert "no whole number stages gives 100 m²" in reason and reason.count("m²") == 3
+    area = call("UF_STAGES_AREA", [10, 5, 50, 3, 50, 200])
+    assert solve("UF_STAGES_AREA", "stages", area, 10, 5, 50, None, 50, 200) == 3
+
+
 def test_any_case():
     assert call("uf_solve_for", ["uf_flux_darcy", "VISCOSITY", 72, 1, None, 5e12]) == pytest.approx(1)
 

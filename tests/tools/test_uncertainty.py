@@ -89,9 +89,23 @@ def test_a_temperature_keeps_its_zero_point_out_of_the_uncertainty():
     assert celsius[1] == pytest.approx(0.0200, abs=5e-4)  # dµ/dT of water at 25 °C is about -2.2 % per kelvin
 
 
-def test_per_cent_of_a_fraction_is_its_unit():
-    row = call("UF_UNCERTAINTY", ["UF_FLUX_DARCY", 2, 1, 5e12, 0, 0, 1, "50 ± 5 %"])[0]
-    assert row[0] == pytest.approx(108, rel=1e-3) and row[1] == pytest.approx(72 * 0.05, rel=1e-2)
+def test_per_cent_of_a_fraction(why):
+    for text in ("50 % ± 5 %", "0.5 ± 0.05", call("UF_QUANTITY", [50, "%", 5])):
+        row = call("UF_UNCERTAINTY", [DARCY, 2, 1, 5e12, 0, 0, 1, text])[0]
+        assert row[0] == pytest.approx(108, rel=1e-3) and row[1] == pytest.approx(72 * 0.05, rel=1e-2)
+    assert call("UF_UNCERTAINTY", [DARCY, 2, 1, 5e12, 0, 0, 1, "0.95 ± 2 %"]).code == "#VALUE!"
+    assert "two ways" in why("UF_UNCERTAINTY", DARCY, 2, 1, 5e12, 0, 0, 1, "0.95 ± 2 %")
+
+
+def test_an_uncertainty_of_zero_is_a_certain_value():
+    row = call("UF_UNCERTAINTY", [DARCY, "2 ± 0 bar", "1 ± 0.1 cP", 5e12])[0]
+    assert row[4] == 0 and row[5] == 1
+    assert call("UF_UNCERTAINTY", [DARCY, "2.0 bar ± 0.1 bar", 1, 5e12]) == call("UF_UNCERTAINTY", [DARCY, "2.0 ± 0.1 bar", 1, 5e12])
+    assert call("UF_UNCERTAINTY", [DARCY, "2.0 bar ± 5 %", 1, 5e12]) == call("UF_UNCERTAINTY", [DARCY, "2.0 ± 0.1 bar", 1, 5e12])
+
+
+def test_the_function_s_own_cautions(why):
+    assert "fitted" in why("UF_UNCERTAINTY", "UF_SHERWOOD_TURBULENT", "5000 ± 100", 1000)
 
 
 def test_a_distribution_is_cut_off_at_the_bounds(why):

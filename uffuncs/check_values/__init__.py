@@ -27,7 +27,7 @@ from ..units import compile_unit
 
 KINDS = ("printed", "library", "derived", "memory", "practice", "regression")
 #: Kinds that count as a check against something outside this library.
-OUTSIDE = ("printed", "library", "derived", "memory", "practice")
+OUTSIDE = ("printed", "library", "derived", "memory")
 
 _KEYS = {"function", "source", "place", "kind", "arguments", "expected", "cell", "tolerance", "reason", "note"}
 _DIGITS = re.compile(r"[-+]?(\d*)\.?(\d*)(?:[eE]([-+]?\d+))?")
@@ -52,7 +52,7 @@ class Check:
     @property
     def cells(self) -> list:
         """The arguments as cell values: a list stands for a column, a list of lists for a block."""
-        return [_as_cell(a) for a in self.arguments]
+        return [as_cell(a) for a in self.arguments]
 
 
 @dataclass(frozen=True)
@@ -128,17 +128,17 @@ def run(check: Check) -> Outcome:
     row, column = check.cell
     if isinstance(result, list):
         result = result[row - 1][column - 1] if row <= len(result) and column <= len(result[row - 1]) else ErrorValue("#N/A")
-    printed, tolerance = expected(check)
+    printed, tolerance = expected(check, isinstance(result, str))
     return Outcome(printed, result, tolerance)
 
 
-def expected(check: Check) -> tuple[float | str, float]:
-    """The printed value in the worksheet unit, and the tolerance."""
+def expected(check: Check, is_text: bool = False) -> tuple[float | str, float]:
+    """The printed value in the worksheet unit, and the tolerance; a text is compared as it stands."""
     text = check.expected.strip()
     if check.expected.startswith("#"):
         return ErrorValue(text), 0.0
     record = find(check.function)
-    if isinstance(result_text(check), str) or not re.match(r"[-+−]?[\d.]", text):
+    if is_text or not re.match(r"[-+−]?[\d.]", text):
         return text, 0.0
     number, unit = split_number(check.function, text, "")
     digits = text[: len(text) - len(unit)].strip().replace("−", "-")
@@ -158,15 +158,6 @@ def expected(check: Check) -> tuple[float | str, float]:
     return float(number), tolerance
 
 
-def result_text(check: Check) -> object:
-    """The checked result where it is a text: then the expected text is compared as it stands."""
-    result = call(check.function, check.cells)
-    row, column = check.cell
-    if isinstance(result, list) and row <= len(result) and column <= len(result[row - 1]):
-        result = result[row - 1][column - 1]
-    return result
-
-
 def half_unit(digits: str) -> float:
     """Half a unit of the last digit of a printed number."""
     _, decimals, exponent = _DIGITS.fullmatch(digits).groups()
@@ -177,7 +168,8 @@ def _choice_value(argument: object) -> object:
     return argument.strip().casefold() if isinstance(argument, str) else argument
 
 
-def _as_cell(argument: object) -> object:
+def as_cell(argument: object) -> object:
+    """A value of a data file as a cell: a list is a column, a list of lists a block, "" a blank."""
     if not isinstance(argument, list):
         return None if argument == "" else argument
     rows = [row if isinstance(row, list) else [row] for row in argument]

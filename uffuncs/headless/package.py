@@ -130,7 +130,7 @@ def _read_file(path):
     try:
         size = path.stat().st_size
         if not path.is_file():
-            raise UnreadableWorkbook(f"{path.name}: is not a file")
+            raise UnreadableWorkbook(f"{path}: is not a file")
         if size > MAX_FILE_BYTES:
             raise UnreadableWorkbook(
                 f"{path.name}: {size:,} bytes, more than the limit of {MAX_FILE_BYTES:,} for a workbook file"

@@ -352,14 +352,22 @@ def _shown(place):
     return f"{sheet}!{address(row, column)}"
 
 
+def _unreadable(detail):
+    """The engine's parser in plain words: where it stopped, and what it missed."""
+    found = re.search(r"at position (\d+): ([^{]*)", detail)
+    if not found:
+        return "the formula cannot be read"
+    what = found[2].partition(", got ")[0].strip()
+    return f"the formula cannot be read near character {found[1]}: {what[:1].lower()}{what[1:]}"
+
+
 def _plain(place, code, kinds, texts, unknown, rewriter, evaluation):
     """The reason of an error that neither a uffuncs function nor another cell explains."""
     kind, formula = kinds.get(place, ""), texts.get(place, "")
     if kind == "Circ":
         return "circular reference: the formula depends on its own cell"
     if kind == "Error" or formula.startswith("=#ERROR!"):
-        detail = formula.partition("#ERROR!:")[2].strip()
-        return f"the formula cannot be read: {detail}" if detail else "the formula cannot be read"
+        return _unreadable(formula.partition("#ERROR!:")[2])
     if place in unknown and code == "#NAME?":
         return f"there is no function {' or '.join(unknown[place])}"
     if kind == "NImpl":

@@ -32,6 +32,10 @@ CONDITIONS = {
 _CONDITION_COLUMNS = ("temperature_celsius", "lowest_concentration", "highest_concentration")  # °C, g/L, g/L
 
 
+#: Characters of an origin, so that UF_WHY shows it whole.
+MOST_SHOWN = 230
+
+
 @dataclass(frozen=True)
 class Entry:
     """One published property of one solute, in SI; conditions that do not apply are None."""
@@ -45,9 +49,14 @@ class Entry:
 
     @property
     def origin(self) -> str:
-        """Where the value comes from, in the order of what must not be cut off."""
+        """Where the value comes from; of the note as many clauses as a cell's note has room for."""
         at = f"at {self.temperature - 273.15:.6g} °C" if self.temperature is not None else ""
-        return "; ".join(filter(None, [at, self.source, self.note]))
+        text = "; ".join(filter(None, [at, self.source]))
+        for clause in filter(None, self.note.split("; ")):
+            if len(text) + len(clause) > MOST_SHOWN:
+                break
+            text = f"{text}; {clause}"
+        return text
 
 
 @lru_cache(maxsize=1)

@@ -92,6 +92,7 @@ def yield_continuous(concentration_factor: Number, rejection: Number) -> Number:
              "mean C_p = C_0 (1 − Y)/(1 − 1/X + N/X)",
     source=f"balances of each component; {CHERYAN}",
     choices={"mode": MODES},
+    arguments={"rejection": replace(quantity("rejection"), low=-1)},  # salts, by Donnan exclusion
     names={"component": "Names of the components", "mode": "Batch, or one continuous mixed stage"},
     dimensional="rows of a table",
 )

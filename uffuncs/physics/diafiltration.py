@@ -23,7 +23,14 @@ NG = ("Ng, Lundblad & Mitra, Optimization of solute separation by diafiltration,
       "doi 10.1080/01496397608085339")
 
 
+#: Donnan exclusion can drive a small ion into the permeate above its concentration in the feed.
+DONNAN_SIEVING = replace(quantity("sieving_coefficient"), high=2)
+#: The same seen as a rejection below zero.
+DONNAN_REJECTION = replace(quantity("rejection"), low=-1)
+
+
 @worksheet_function(
+    arguments={"sieving_coefficient": DONNAN_SIEVING},
     result="diavolumes",
     equation="N = −ln f/S",
     source=f"{BLATT_BATCH}; {NG}",
@@ -39,6 +46,7 @@ def diavolumes(remaining_fraction: Number, sieving_coefficient: Number = 1.0) ->
 
 
 @worksheet_function(
+    arguments={"sieving_coefficient": DONNAN_SIEVING},
     result="remaining_fraction",
     equation="f = e^(−S N)",
     source=f"{BLATT_BATCH}; {NG}",
@@ -52,6 +60,7 @@ def diafiltration_remaining(diavolumes: Number, sieving_coefficient: Number = 1.
 
 
 @worksheet_function(
+    arguments={"sieving_coefficient": DONNAN_SIEVING},
     result="remaining_fraction",
     equation="f = (1 + r)^(−S n)",
     source=f"{CHERYAN}; {BLATT_BATCH}",
@@ -217,7 +226,7 @@ def _table_diavolumes_over_flux(law: FluxLaw, start: float, diavolumes: float, s
              "{target_purity} is out of reach: the product's share never rises so high, since others are "
              "held back as well or better"),
     ],
-    arguments={"product": "Row number of the product in the ranges"},
+    arguments={"product": "Row number of the product in the ranges", "rejection": DONNAN_REJECTION},
     dimensional="root of a sum over components",
 )
 def diavolumes_purity(

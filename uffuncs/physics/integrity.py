@@ -9,6 +9,7 @@ from dataclasses import replace
 import numpy as np
 
 from ..declaration import Column, Fitted, Number, Rule, worksheet_function
+from ..errors import NoResult
 from ..quantities import quantity
 from .water import (
     R1_76,
@@ -23,6 +24,9 @@ from .water import (
 NOTICE = ("direct integrity results and removal credit are set by the local regulator and by licensed "
           "practice; this is a calculation aid")
 
+#: The same for the one line that a function wizard shows.
+IN_SHORT = "A calculation aid: the regulator and licensed practice decide."
+
 EPA = "EPA 815-R-06-009, Membrane Filtration Guidance Manual (2005)"
 F316 = "ASTM F316, Pore Size Characteristics of Membrane Filters by Bubble Point and Mean Flow Pore Test"
 CRANE = "Crane Technical Paper 410, Flow of Fluids through Valves, Fittings, and Pipe"
@@ -34,8 +38,9 @@ def _integrity_function(*, remarks: tuple[Rule, ...] = (), **declaration) -> Cal
     """Declare a function of this topic: its notes and UF_WHY carry the notice."""
 
     def register(function: Callable) -> Callable:
-        function.__doc__ = f"{inspect.cleandoc(function.__doc__)}\n\n{NOTICE[0].upper()}{NOTICE[1:]}."
-        return worksheet_function(remarks=[Rule(lambda: True, NOTICE), *remarks], **declaration)(function)
+        summary, _, notes = inspect.cleandoc(function.__doc__).partition("\n")
+        function.__doc__ = f"{summary} {IN_SHORT}\n{notes}\n\n{NOTICE[0].upper()}{NOTICE[1:]}."
+        return worksheet_function(remarks=[*remarks, Rule(lambda: True, NOTICE)], **declaration)(function)
 
     return register
 
@@ -352,6 +357,8 @@ def breach_fiber(
     still forming: the value is on the safe side as a breach flow, not as what a test can tell.
     """
     pieces = np.atleast_1d(fiber_length)
+    if len(pieces) > 2:
+        raise NoResult(f"fiber_length has {len(pieces)} lengths; a cut fiber has two pieces")
     velocity = sum(_piece_velocity(transmembrane_pressure, fiber_diameter, p, viscosity) for p in pieces)
     return 0.25 * np.pi * fiber_diameter**2 * velocity
 

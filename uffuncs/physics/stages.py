@@ -289,7 +289,8 @@ def stages_rated(
     equation="F_(i−1) C_(i−1) = C_i (F_i + (1−R) P_i), F_i = F_(i−1) + W_i − P_i",
     source=BALANCES,
     arguments={"feed_concentration": "Concentration of each component in the feed",
-               "rejection": "Rejection of each component",
+               "rejection": replace(quantity("rejection"), low=-1,  # salts, by Donnan exclusion
+                                    meaning="Rejection of each component"),
                "permeate_flow": "Permeate flow of each stage, from the feed on",
                "diafiltration_flow": "Flow of water into each stage, 0 for none"},
     groups={"permeate_flow": "stages", "diafiltration_flow": "stages"},

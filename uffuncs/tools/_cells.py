@@ -2,12 +2,12 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable, Collection, Sequence
-
-import numpy as np
 
 from ..declaration import Function, Tool
 from ..errors import CellError, ErrorValue, InvalidInput, NotAvailable, UffuncsError
+from ..grids import elements
 from ..reading import is_blank, split_number, unwrapped
 from ..registry import find, near_names
 
@@ -46,21 +46,7 @@ def element_by_element(function: Callable, cells: Sequence, whole: Collection[in
     cells = [c if i in whole else unwrapped(c) for i, c in enumerate(cells)]
     if not any(isinstance(c, (list, tuple)) for i, c in enumerate(cells) if i not in whole):
         return function(*cells)
-    grids = []
-    for i, value in enumerate(cells):
-        rows = [list(row) for row in value] if isinstance(value, (list, tuple)) and i not in whole else [[value]]
-        width = max(map(len, rows))
-        grid = np.empty((len(rows), width), object)
-        for r, row in enumerate(rows):
-            for c in range(width):
-                grid[r, c] = row[c] if c < len(row) else None
-        grids.append(grid)
-    try:
-        grids = np.broadcast_arrays(*grids)
-    except ValueError:
-        shapes = ", ".join(f"{g.shape[0]}×{g.shape[1]}" for g in grids if g.shape != (1, 1))
-        raise InvalidInput(f"the ranges do not fit together in shape: {shapes}") from None
-    return [[_value_or_error(function, [g[r, c] for g in grids]) for c in range(grids[0].shape[1])] for r in range(grids[0].shape[0])]
+    return [[_value_or_error(function, element) for element in row] for row in elements(cells, whole)]
 
 
 def _value_or_error(function: Callable, cells: list):
@@ -88,7 +74,10 @@ def plain_number(name: str, cell: object) -> float:
         cell, unit = split_number(name, cell, "1")
         if unit:
             raise InvalidInput(f"{name} carries the unit '{unit[:20]}'; give the number alone")
-    return float(cell)
+    number = float(cell)
+    if not math.isfinite(number):
+        raise InvalidInput(f"{name} is {number}; give a finite number")
+    return number
 
 
 def plain_text(name: str, cell: object) -> str:

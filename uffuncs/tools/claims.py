@@ -5,7 +5,7 @@ from __future__ import annotations
 from ..declaration import cell_tool
 from ..errors import CellError, ErrorValue, InvalidInput, NoResult
 from ..reading import is_blank, split_number
-from ..units import WORKSHEET_UNITS, compile_unit, known_unit
+from ..units import convert, known_unit
 from ._cells import OWN, element_by_element, plain_number, plain_text
 
 SENSES = ("equal", "at most", "at least")
@@ -46,7 +46,7 @@ def _verdict(claimed, calculated, tolerance, sense, unit) -> str:
             return "holds: +0.0 %"
         raise NoResult("the calculated value is 0: a relative difference cannot be told")
     difference = (claim - value) / abs(value)
-    shown = f"{100 * difference:+.1f} %".replace("-", "−")
+    shown = f"{100 * difference:+.1f} %".replace("-", "−").replace("−0.0 %", "+0.0 %")
     slack = allowed + 1e-12  # a claim exactly at the tolerance holds, whatever the rounding
     if difference > slack and chosen != "at least":
         return f"above: {shown}"
@@ -78,6 +78,4 @@ def _in_unit(name: str, cell: object, unit: str) -> float:
         return number
     if not unit:
         raise InvalidInput(f"{name} carries the unit '{own[:20]}'; name a unit in the last argument")
-    si_unit, scale, offset = WORKSHEET_UNITS.get(unit) or (unit, 1.0, 0.0)
-    own_scale, own_offset = compile_unit(own, si_unit)
-    return (own_scale * number + own_offset - offset) / scale
+    return convert(number, own, unit)

@@ -59,4 +59,7 @@ def _quantity(value, unit, uncertainty) -> str:
     if not (math.isfinite(number) and math.isfinite(spread)) or spread < 0:
         raise InvalidInput(f"value and uncertainty must be numbers, the uncertainty not below 0; got {number:g}, {spread:g}")
     known_unit(text)
-    return f"{number!r} ± {spread!r} {text}" if spread else f"{number!r} {text}"
+    if not spread:
+        return f"{number!r} {text}"
+    own = " %" if text == "%" else ""  # a lone % at the end could be read as relative
+    return f"{number!r}{own} ± {spread!r} {text}"

@@ -20,6 +20,8 @@ from ._cells import FUNCTION_NAME, element_by_element, function_named, plain_tex
 SCAN = 200
 #: Decades that the scan goes down from the larger bound where the bounds include zero.
 DECADES = 18
+#: Whole numbers are tried one by one up to this many; beyond, the function is solved as if they were not whole.
+MOST_COUNTED = 10_000
 
 
 @cell_tool(
@@ -125,6 +127,8 @@ def find_root(f: Callable, target: float, q: Quantity, shown: Callable[[float], 
     NoResult
         No such x, several, or f does not change with x there; the reason gives the values at the bounds.
     """
+    if q.whole and q.high - q.low <= MOST_COUNTED:
+        return _counted(f, target, q, shown)
     x = _scan(q)
     y = _with_edges_of_the_domain(f, x)
     x, y = np.array(sorted(y)), np.array([y[v] for v in sorted(y)]) - target
@@ -163,6 +167,27 @@ def find_root(f: Callable, target: float, q: Quantity, shown: Callable[[float], 
             raise NoResult(f"{q.name} would be {number:.6g}, but must be a whole number")
         return q.to_si(float(round(number)))
     return root
+
+
+def _counted(f: Callable, target: float, q: Quantity, shown: Callable[[float], str]) -> float:
+    """The one whole number with f(x) = target, by trying them all."""
+    numbers = np.arange(math.ceil(q.low), math.floor(q.high) + 1.0)
+    y = np.broadcast_to(np.asarray(f(q.to_si(numbers)), float), numbers.shape)
+    hits = numbers[np.abs(y - target) <= 1e-9 * max(abs(target), 1e-300)]
+    if len(hits) == 1:
+        return q.to_si(float(hits[0]))
+    if len(hits):
+        raise NoResult(f"the function is flat: {len(hits)} values of {q.name} give {shown(target)}, from {hits[0]:g} to {hits[-1]:g}")
+    below = np.flatnonzero(np.sign(y[:-1] - target) * np.sign(y[1:] - target) < 0)
+    if len(below):
+        i = below[0]
+        raise NoResult(f"no whole number {q.name} gives {shown(target)}: {numbers[i]:g} gives {shown(y[i])}, {numbers[i + 1]:g} {shown(y[i + 1])}")
+    good = np.flatnonzero(np.isfinite(y))
+    if not len(good):
+        raise NoResult(f"no {q.name} within {q.bounds_text} gives a result with these arguments")
+    first, last = good[[0, -1]]
+    raise NoResult(f"no whole number {q.name} gives {shown(target)}: it is {shown(y[first])} at {numbers[first]:g} and "
+                   f"{shown(y[last])} at {numbers[last]:g}")
 
 
 def _scan(q: Quantity) -> np.ndarray:

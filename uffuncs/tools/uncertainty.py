@@ -13,6 +13,7 @@ import numpy as np
 from ..cell import compile_function
 from ..declaration import Argument, Function, cell_tool
 from ..errors import InvalidInput, NoResult, UffuncsError
+from ..reasons import cautions
 from ..units import compile_unit
 from ._cells import FUNCTION_NAME, function_named
 
@@ -25,7 +26,7 @@ JCGM_101 = ("JCGM 101:2008, Evaluation of measurement data, Supplement 1 to the 
             "Carlo method; shares of variance after its annex B")
 
 _NUMBER = r"[-+−]?(?:\d+\.?\d*|\.\d+)(?:[eE][-+−]?\d+)?"
-_NORMAL = re.compile(rf"\s*({_NUMBER})\s*(?:±|\+/-)\s*({_NUMBER})\s*(.*?)\s*", re.DOTALL)
+_NORMAL = re.compile(rf"\s*({_NUMBER})\s*([^±]{{0,60}}?)\s*(?:±|\+/-)\s*({_NUMBER})\s*(.*?)\s*", re.DOTALL)
 _UNIFORM = re.compile(rf"\s*({_NUMBER})\s*\.\.\s*({_NUMBER})\s*(.*?)\s*", re.DOTALL)
 
 
@@ -88,8 +89,8 @@ def uf_uncertainty(function, *cells):
     """Mean, standard uncertainty, 95 % interval, and shares of variance of a result from uncertain arguments.
 
     After the function's name come its arguments, each plain, or "2.0 ± 0.1 bar" (normal, standard uncertainty; +/- may be
-    written for ±), or "2.0 ± 5 % bar" (relative), or "1.8 .. 2.2 bar" (uniform). The arguments are independent. A distribution is
-    cut off at the argument's bounds, and UF_WHY says so. The sample is a fixed low-discrepancy sequence: the same arguments give
+    written for ±), or "2.0 ± 5 % bar" (relative), or "1.8 .. 2.2 bar" (uniform). The arguments count as independent: two results
+    of one fit, such as k and C_g of UF_GEL_FIT, are not. A distribution is cut off at the argument's bounds, and UF_WHY says so. The sample is a fixed low-discrepancy sequence: the same arguments give
     the same digits. A share is an argument's own variance, the others at their means, over the sum of these.
     """
     record, inputs = _inputs(function, cells)
@@ -112,15 +113,18 @@ def _inputs(function, cells: Sequence) -> tuple[Function, list]:
             raise InvalidInput(f"{argument.name} takes one cell here, not a range")
         if argument.kind == "number" and isinstance(cell, str):
             found = read_uncertain(argument, cell)
-            if found is not None:
+            if isinstance(found, Distribution):
                 distributions[i] = found
-                certain[i] = argument.quantity.from_si(min(max(found.mean, found.low), found.high))
+            if found is not None:
+                certain[i] = argument.quantity.from_si(_mean(found) if isinstance(found, Distribution) else found)
     values = compiled.si_values(certain)
     return record, [distributions.get(i, v) for i, v in enumerate(values)]
 
 
-def read_uncertain(argument: Argument, text: str) -> Distribution | None:
-    """A text such as "2.0 ± 0.1 bar" or "1.8 .. 2.2 bar" as a distribution; None where it is a plain text.
+def read_uncertain(argument: Argument, text: str) -> Distribution | float | None:
+    """A text such as "2.0 ± 0.1 bar" or "1.8 .. 2.2 bar" as a distribution; an SI value where the uncertainty is 0.
+
+    None where it is a plain text.
 
     Raises
     ------
@@ -130,18 +134,20 @@ def read_uncertain(argument: Argument, text: str) -> Distribution | None:
     q = argument.quantity
     low, high = sorted((q.to_si(q.low), q.to_si(q.high)))
     if found := _NORMAL.fullmatch(text):
-        number, spread, unit = _float(found[1]), _float(found[2]), found[3]
-        if unit.startswith("%") and unit != "%":
-            spread, unit = abs(number) * spread / 100, unit[1:].strip()
-        scale, offset = _unit(argument, unit)
+        number, own_unit, spread, unit = _float(found[1]), found[2], _float(found[3]), found[4]
+        if unit.startswith("%"):
+            if q.unit == "-" and not own_unit and unit == "%":
+                raise InvalidInput(f"{argument.name}: '{text[:40]}' can be read in two ways; write '95 % ± 2 %' or '0.95 ± 0.02'")
+            if own_unit != "%":  # relative
+                spread, unit = abs(number) * spread / 100, unit[1:].strip() or own_unit
+        scale, offset = _unit(argument, own_unit or unit)
+        spread_scale = _unit(argument, unit or own_unit)[0]
         mean = scale * number + offset
         if spread < 0:
             raise InvalidInput(f"{argument.name}: the uncertainty in '{text[:40]}' is negative")
-        if spread == 0:
-            return None if low <= mean <= high else _outside(argument, text)
         if not low <= mean <= high:
             _outside(argument, text)
-        return Distribution("normal", mean, abs(scale) * spread, low, high)
+        return Distribution("normal", mean, abs(spread_scale) * spread, low, high) if spread else mean
     if found := _UNIFORM.fullmatch(text):
         scale, offset = _unit(argument, found[3])
         ends = [scale * _float(x) + offset for x in found.groups()[:2]]
@@ -164,7 +170,7 @@ def _float(text: str) -> float:
 def _unit(argument: Argument, unit: str) -> tuple[float, float]:
     q = argument.quantity
     try:
-        return compile_unit(unit, q.si_unit, q.absolute) if unit else (q.scale, q.offset)
+        return compile_unit(unit, q.si_unit, q.absolute, q.unit) if unit else (q.scale, q.offset)
     except InvalidInput as error:
         raise InvalidInput(f"{argument.name}: {error}") from None
 
@@ -245,4 +251,5 @@ def _caution(cells: Sequence) -> str:
     result = propagate(_function_of_uncertain(record, inputs), [d for d in inputs if isinstance(d, Distribution)])
     if result.lost:
         found.append(f"{100 * result.lost:.2g} % of the sample has no result and is left out")
-    return "; ".join(found)
+    means = [_mean(i) if isinstance(i, Distribution) else i for i in inputs]
+    return "; ".join([*found, *cautions(record, means, result.mean)])
