@@ -1,4 +1,4 @@
-"""Calc: 10,000 cells of UF_FLUX_DARCY in a running LibreOffice, against native, Basic and do-nothing functions."""
+"""Calc: 10,000 cells of UF_FLUX_DARCY in LibreOffice, against native, Basic and do-nothing functions."""
 
 from __future__ import annotations
 
@@ -103,8 +103,10 @@ COMPONENTS = """<?xml version="1.0" encoding="UTF-8"?>
 """
 MANIFEST = """<?xml version="1.0" encoding="UTF-8"?>
 <manifest:manifest xmlns:manifest="http://openoffice.org/2001/manifest">
-  <manifest:file-entry manifest:full-path="types.rdb" manifest:media-type="application/vnd.sun.star.uno-typelibrary;type=RDB"/>
-  <manifest:file-entry manifest:full-path="nothing.components" manifest:media-type="application/vnd.sun.star.uno-components"/>
+  <manifest:file-entry manifest:full-path="types.rdb"
+      manifest:media-type="application/vnd.sun.star.uno-typelibrary;type=RDB"/>
+  <manifest:file-entry manifest:full-path="nothing.components"
+      manifest:media-type="application/vnd.sun.star.uno-components"/>
 </manifest:manifest>
 """
 IDENTIFIER = """<?xml version="1.0" encoding="UTF-8"?>
@@ -140,9 +142,18 @@ def rows():
     yield Row("one array formula of a function in Basic", per_cell["basic, array"], "µs/row")
     for place, label in (("in process", "in process"), ("worker", "in the worker")):
         yield Row(f"one array formula of UF_FLUX_DARCY {label}", per_cell[f"{place}, array"], "µs/row")
-        yield Row("  over the array formula in Basic", times[f"{place}, array"] / times["basic, array"], "times", 1)
-        yield Row("  over the function in Basic, cell by cell", times[f"{place}, array"] / times["basic"], "times", 1)
-    yield Row("LibreOffice started until the first value of a function, in process", times["in process, first"], "s")
+        yield Row(
+            "  over the array formula in Basic", times[f"{place}, array"] / times["basic, array"], "times", 1
+        )
+        yield Row(
+            "  over the function in Basic, cell by cell",
+            times[f"{place}, array"] / times["basic"],
+            "times",
+            1,
+        )
+    yield Row(
+        "LibreOffice started until the first value of a function, in process", times["in process, first"], "s"
+    )
     yield Row("the same, in the worker", times["worker, first"], "s")
 
 
@@ -169,7 +180,10 @@ def _measured(office, folder: Path, place: str) -> dict[str, float]:
             _fill(sheets[key][1], formula, as_array=key in arrays)
         for _ in range(RUNS):  # in turns, so that other load on the machine meets all of them
             for key, (copy, sheet) in sheets.items():
-                found[key] = min(found.get(key, float("inf")), _recalculation(copy, sheet, 1.0 if key == "nothing" else 144.0 / 1.002))
+                found[key] = min(
+                    found.get(key, float("inf")),
+                    _recalculation(copy, sheet, 1.0 if key == "nothing" else 144.0 / 1.002),
+                )
     return found
 
 
@@ -204,11 +218,18 @@ def _add_nothing(folder: Path) -> None:
 
     parameters = [(name, "any") for name in ("pressure", "viscosity", "resistance")]
     files = {
-        "META-INF/manifest.xml": MANIFEST, "description.xml": IDENTIFIER, "nothing.components": COMPONENTS, "nothing.py": NOTHING,
+        "META-INF/manifest.xml": MANIFEST,
+        "description.xml": IDENTIFIER,
+        "nothing.components": COMPONENTS,
+        "nothing.py": NOTHING,
     }
     for path, text in files.items():
         (folder / path).parent.mkdir(parents=True, exist_ok=True)
         (folder / path).write_text(text, encoding="utf-8")
     (folder / "types.rdb").write_bytes(
-        type_library("org.uffuncs.nothing.XFunctions", "org.uffuncs.nothing.Functions", [("nothing", "double", parameters)])
+        type_library(
+            "org.uffuncs.nothing.XFunctions",
+            "org.uffuncs.nothing.Functions",
+            [("nothing", "double", parameters)],
+        )
     )

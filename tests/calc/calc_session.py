@@ -2,15 +2,14 @@
 
 from __future__ import annotations
 
-import os
 import subprocess
 import sys
 import time
 import uuid
 from pathlib import Path
 
-from uffuncs.calc.office import START_AGAIN, Office, bundle_option, clean_environment, profile_option
 from uffuncs.calc.inside.configuration import OVERRIDE
+from uffuncs.calc.office import START_AGAIN, Office, bundle_option, clean_environment, profile_option
 
 XLSX, ODS = "Calc MS Excel 2007 XML", "calc8"
 DEBIAN_BRIDGE = "/usr/lib/python3/dist-packages"
@@ -31,14 +30,30 @@ def uno_bridge():
 class Session:
     """One LibreOffice; `with` ends it."""
 
-    def __init__(self, office: Office, folder: Path, configuration: Path | None = None, bundled=True,
-                 compatibility_names=True, hidden=True, environment=None):
+    def __init__(
+        self,
+        office: Office,
+        folder: Path,
+        configuration: Path | None = None,
+        bundled=True,
+        compatibility_names=True,
+        hidden=True,
+        environment=None,
+        profile: Path | None = None,
+    ):
         self.uno = uno_bridge()
         pipe = "uffuncs" + uuid.uuid4().hex[:12]
-        profile = folder / "profile"
+        profile = profile or folder / "profile"
         program = office.program / "soffice.bin"
-        command = [str(program if program.is_file() else office.soffice), profile_option(profile), "--norestore", "--nologo", "--nodefault",
-                   "--nofirststartwizard", f"--accept=pipe,name={pipe};urp;"]
+        command = [
+            str(program if program.is_file() else office.soffice),
+            profile_option(profile),
+            "--norestore",
+            "--nologo",
+            "--nodefault",
+            "--nofirststartwizard",
+            f"--accept=pipe,name={pipe};urp;",
+        ]
         if bundled:
             command.append(bundle_option(folder / "bundled", compatibility_names))
         if hidden:
@@ -68,8 +83,13 @@ class Session:
                 time.sleep(0.05)
 
     def _start(self):
-        self.process = subprocess.Popen(self.command, env=self.environment, stdin=subprocess.DEVNULL,
-                                        stdout=subprocess.DEVNULL, stderr=subprocess.DEVNULL)
+        self.process = subprocess.Popen(
+            self.command,
+            env=self.environment,
+            stdin=subprocess.DEVNULL,
+            stdout=subprocess.DEVNULL,
+            stderr=subprocess.DEVNULL,
+        )
 
     def create(self, service: str):
         return self.context.ServiceManager.createInstanceWithContext(service, self.context)
@@ -111,11 +131,6 @@ class Session:
         self.close()
 
 
-def kill_with_children(session: Session):
-    session.process.kill()
-    session.process.wait()
-
-
 def is_alive(process: int) -> bool:
     """Whether a process runs (a zombie does not)."""
     try:
@@ -126,8 +141,9 @@ def is_alive(process: int) -> bool:
 
 def settings(folder: Path, **more) -> Path:
     """A file of settings that names this Python; for a session of its own."""
-    from uffuncs.calc.installation import own_settings
     import json
+
+    from uffuncs.calc.installation import own_settings
 
     path = folder / "calc.json"
     path.write_text(json.dumps(own_settings() | more), encoding="utf-8")

@@ -1,4 +1,4 @@
-"""Fixtures of the tests with the real LibreOffice: without one they are skipped by name, or fail where it must be there."""
+"""Fixtures of the tests with the real LibreOffice; without one they are skipped, or fail where it must be."""
 
 from __future__ import annotations
 

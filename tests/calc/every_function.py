@@ -62,7 +62,7 @@ def bad_calls():
                 low = argument.quantity.low
                 wrong += [low - max(1.0, abs(low)), "", "7,5 " + argument.unit]
             for value in wrong:
-                yield record.worksheet_name, [*cells[:i], value, *cells[i + 1:]]
+                yield record.worksheet_name, [*cells[:i], value, *cells[i + 1 :]]
 
 
 class _Writer:
@@ -117,5 +117,7 @@ def _cell(argument):
     if isinstance(argument, Raw):
         return ErrorValue("#DIV/0!")
     if isinstance(argument, list):
-        return [[None if v == "" else v for v in (row if isinstance(row, list) else [row])] for row in argument]
+        return [
+            [None if v == "" else v for v in (row if isinstance(row, list) else [row])] for row in argument
+        ]
     return None if argument == "" else argument

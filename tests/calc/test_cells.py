@@ -1,4 +1,4 @@
-"""The cell contract in the real program: units, blanks, omitted arguments, ranges, error values, further arguments."""
+"""The cell contract in the real program: units, blanks, ranges, error values, further arguments."""
 
 from __future__ import annotations
 
@@ -44,16 +44,19 @@ def test_unit_text_and_number(sheet):
     assert put(sheet, "A1", "=uf_flux_darcy(B1;B2;5E12)") == (pytest.approx(expected, rel=1e-15), 0)
 
 
-@pytest.mark.parametrize("formula, error", [
-    ("=UF_FLUX_DARCY(-1;1.002;5E12)", 503),
-    ('=UF_FLUX_DARCY("2,4";1.002;5E12)', 519),
-    ('=UF_FLUX_DARCY("2 kg";1.002;5E12)', 519),
-    ("=UF_FLUX_DARCY(;1.002;5E12)", 519),
-    ("=UF_FLUX_DARCY(2)", 519),
-    ("=UF_FLUX_DARCY(1/0;1.002;5E12)", 532),
-    ("=UF_FLUX_DARCY(NA();1.002;5E12)", 32767),
-    ('=UF_SOURCE("UF_NOTHING")', 32767),
-])
+@pytest.mark.parametrize(
+    "formula, error",
+    [
+        ("=UF_FLUX_DARCY(-1;1.002;5E12)", 503),
+        ('=UF_FLUX_DARCY("2,4";1.002;5E12)', 519),
+        ('=UF_FLUX_DARCY("2 kg";1.002;5E12)', 519),
+        ("=UF_FLUX_DARCY(;1.002;5E12)", 519),
+        ("=UF_FLUX_DARCY(2)", 519),
+        ("=UF_FLUX_DARCY(1/0;1.002;5E12)", 532),
+        ("=UF_FLUX_DARCY(NA();1.002;5E12)", 32767),
+        ('=UF_SOURCE("UF_NOTHING")', 32767),
+    ],
+)
 def test_true_error_values(sheet, formula, error):
     assert put(sheet, "A1", formula)[1] == error
     assert put(sheet, "A2", '=IFERROR(A1;"caught")') == ("caught", 0)
@@ -72,7 +75,9 @@ def test_a_blank_cell_arrives_as_zero(sheet):
 
 def test_true_arrives_as_one(sheet):
     """A known limit of the program: a boolean cannot be told from a number."""
-    assert put(sheet, "A1", "=UF_FLUX_DARCY(TRUE();1.002;5E12)") == put(sheet, "A2", "=UF_FLUX_DARCY(1;1.002;5E12)")
+    assert put(sheet, "A1", "=UF_FLUX_DARCY(TRUE();1.002;5E12)") == put(
+        sheet, "A2", "=UF_FLUX_DARCY(1;1.002;5E12)"
+    )
 
 
 def test_errors_stay_in_their_places(sheet):
@@ -87,7 +92,7 @@ def test_errors_stay_in_their_places(sheet):
 
 
 def test_an_error_cell_in_a_range(sheet):
-    """A known limit: the program refuses the whole call (Err:504), unless IFERROR makes the cell a blank text."""
+    """A known limit: the program refuses the whole call (Err:504); IFERROR makes the cell a blank text."""
     column(sheet, "A", [1.0, "=NA()", 2.0])
     assert array(sheet, "B1:B3", "=UF_FLUX_DARCY(A1:A3;1;5E12)") == [["error 504"]] * 3
     values = array(sheet, "C1:C3", '=UF_FLUX_DARCY(IFERROR(A1:A3;"");1;5E12)')
@@ -118,18 +123,28 @@ def test_whole_columns_of_a_fit(sheet):
     from uffuncs.check_values import checks
     from uffuncs.registry import functions
 
-    check = next(c for c in checks() if [type(a) for a in c.arguments] == [list, list]
-                 and all(isinstance(v, (int, float)) for a in c.arguments for v in a)
-                 and not functions()[c.function].block)
-    for letter, values in zip("AB", check.arguments):
+    check = next(
+        c
+        for c in checks()
+        if [type(a) for a in c.arguments] == [list, list]
+        and all(isinstance(v, (int, float)) for a in c.arguments for v in a)
+        and not functions()[c.function].block
+    )
+    for letter, values in zip("AB", check.arguments, strict=True):
         column(sheet, letter, values)
-    assert put(sheet, "D1", f"={check.function}(A:A;B:B)")[0] == pytest.approx(call(check.function, check.cells), rel=1e-14)
+    assert put(sheet, "D1", f"={check.function}(A:A;B:B)")[0] == pytest.approx(
+        call(check.function, check.cells), rel=1e-14
+    )
 
 
 def test_further_arguments(sheet):
-    value, error = put(sheet, "A1", '=UF_SOLVE_FOR("UF_FLUX_DARCY";"transmembrane_pressure";"20 gfd";;1.002;5E12)')
+    value, error = put(
+        sheet, "A1", '=UF_SOLVE_FOR("UF_FLUX_DARCY";"transmembrane_pressure";"20 gfd";;1.002;5E12)'
+    )
     assert error == 0
-    assert value == call("UF_SOLVE_FOR", ["UF_FLUX_DARCY", "transmembrane_pressure", "20 gfd", None, 1.002, 5e12])
+    assert value == call(
+        "UF_SOLVE_FOR", ["UF_FLUX_DARCY", "transmembrane_pressure", "20 gfd", None, 1.002, 5e12]
+    )
     uncertain = ["UF_FLUX_DARCY", "2.0 ± 0.1 bar", "1.8 .. 2.2 cP", 5e12]
     row = array(sheet, "A2:K2", '=UF_UNCERTAINTY("UF_FLUX_DARCY";"2.0 ± 0.1 bar";"1.8 .. 2.2 cP";5E12)')[0]
     assert row == call("UF_UNCERTAINTY", uncertain)[0]

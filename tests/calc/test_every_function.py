@@ -15,7 +15,7 @@ from uffuncs.registry import functions
 
 @pytest.fixture(scope="module")
 def books(calc, folder):
-    """The workbook as the headless engine and as LibreOffice compute it: (formulas saved, headless values, Calc's values)."""
+    """Counts, formulas as built and as LibreOffice saves them, values of both engines."""
     source = folder / "every.xlsx"
     calls = build(source)
     report = recalculate(source, folder / "headless.xlsx")
@@ -25,8 +25,13 @@ def books(calc, folder):
     calc.store(document, folder / "calc.xlsx", XLSX)
     document.close(True)
     load = openpyxl.load_workbook
-    return (calls, load(source), load(folder / "calc.xlsx"), load(folder / "headless.xlsx", data_only=True),
-            load(folder / "calc.xlsx", data_only=True))
+    return (
+        calls,
+        load(source),
+        load(folder / "calc.xlsx"),
+        load(folder / "headless.xlsx", data_only=True),
+        load(folder / "calc.xlsx", data_only=True),
+    )
 
 
 def test_every_function_is_called(books):
@@ -60,7 +65,9 @@ def test_names_are_saved_unchanged(books):
     _, source, saved, *_ = books
     for title in (WHOLE, BAD):
         for row in source[title].iter_rows(min_col=2, max_col=2):
-            before, after = (getattr(v, "text", v) for v in (row[0].value, saved[title][row[0].coordinate].value))
+            before, after = (
+                getattr(v, "text", v) for v in (row[0].value, saved[title][row[0].coordinate].value)
+            )
             if isinstance(before, str):
                 assert name_of(after) == name_of(before)
 

@@ -1,4 +1,4 @@
-"""Workbooks in .xlsx and .ods: opened, computed, saved and opened again, with the names of the functions unchanged."""
+"""Workbooks in .xlsx and .ods: opened, computed, saved and opened again; the functions keep their names."""
 
 from __future__ import annotations
 
@@ -30,7 +30,9 @@ def source(folder):
     for place, formula in FORMULAS.items():
         sheet[place] = formula
     sheet["D1"] = ArrayFormula("D1:D2", "=UF_FLUX_DARCY(A1:A2,1,5E12)")
-    book.defined_names["membrane_flux"] = DefinedName("membrane_flux", attr_text="UF_FLUX_DARCY(Sheet!$A$1,1.002,5E12)")
+    book.defined_names["membrane_flux"] = DefinedName(
+        "membrane_flux", attr_text="UF_FLUX_DARCY(Sheet!$A$1,1.002,5E12)"
+    )
     path = folder / "source.xlsx"
     book.save(path)
     return path
@@ -68,7 +70,9 @@ def test_xlsx_round_trip(calc, source, folder, expected):
     sheet = book.active
     assert sheet["B1"].value == '=UF_FLUX_DARCY("35 psi",1.002,5000000000000)'
     assert sheet["B2"].value == "=UF_FLUX_DARCY(A1,A2,5000000000000,,1000000000000)"
-    assert sheet["D1"].value.text == "=UF_FLUX_DARCY(A1:A2,1,5000000000000)" and sheet["D1"].value.ref == "D1:D2"
+    assert (
+        sheet["D1"].value.text == "=UF_FLUX_DARCY(A1:A2,1,5000000000000)" and sheet["D1"].value.ref == "D1:D2"
+    )
     assert book.defined_names["membrane_flux"].attr_text.startswith("UF_FLUX_DARCY(")
     again = opened(calc, saved)
     twice = calc.store(again, folder / "twice.xlsx", XLSX)
@@ -94,7 +98,7 @@ def calc_text(document, place):
 
 
 def test_names_of_an_older_version_are_bound_on_loading(office, calc, source, tmp_path, expected):
-    """Without the names for .xlsx the program reads the functions as unknown, as LibreOffice 7.4 does, until they are bound."""
+    """Without names for .xlsx this program reads the functions as unknown, as 7.4 does, until bound."""
     calc.close()
     with Session(office, tmp_path, settings(tmp_path), compatibility_names=False) as session:
         document = session.open(source)

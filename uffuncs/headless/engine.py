@@ -55,4 +55,8 @@ def engine_named(name):
         from .formualizer_engine import FormualizerEngine
 
         return FormualizerEngine()
-    raise UnreadableWorkbook(f"there is no engine {name!r}; there is 'formualizer'")
+    if name == "calc":
+        from ..calc.engine import CalcEngine
+
+        return CalcEngine()
+    raise UnreadableWorkbook(f"there is no engine {name!r}; there are 'formualizer' and 'calc'")
