@@ -1,10 +1,14 @@
 """Units: the table of worksheet units against pint, trade units against exact definitions, and what is refused."""
 
+import subprocess
+import sys
+from pathlib import Path
+
 import pytest
 
 from uffuncs.cell import call
 from uffuncs.errors import InvalidInput
-from uffuncs.units import WORKSHEET_UNITS, _to_base, compile_unit, convert
+from uffuncs.units import COMMON_UNITS, WORKSHEET_UNITS, _to_base, compile_unit, convert
 
 GALLON, FOOT, INCH, POUND_FORCE, DAY = 3.785411784e-3, 0.3048, 0.0254, 4.4482216152605, 86400.0  # exact by definition
 PSI = POUND_FORCE / INCH**2
@@ -19,6 +23,19 @@ def test_worksheet_unit_is_what_pint_makes_of_it(unit):
     pint_scale, pint_offset = _to_base(unit)
     assert scale == pytest.approx(pint_scale / _to_base(si)[0], rel=1e-12)
     assert offset == pytest.approx(pint_offset, abs=1e-9)
+
+
+@pytest.mark.parametrize("unit", sorted(COMMON_UNITS))
+def test_common_unit_is_what_pint_makes_of_it(unit):
+    si, scale, offset = COMMON_UNITS[unit]
+    assert (scale, offset) == (pytest.approx(_to_base(unit)[0] / _to_base(si)[0], rel=1e-12), pytest.approx(_to_base(unit)[1], abs=1e-9))
+
+
+def test_common_units_do_not_load_pint():
+    code = ("import sys; from uffuncs.cell import call\n"
+            "assert call('UF_FLUX_DARCY', ['35 psig', '1 cP', '5e12']) and call('UF_CONVERT', [1, 'gfd', 'LMH']) and call('UF_CLAIM', ['20 gfd', 34, .1, '', 'LMH'])\n"
+            "assert 'pint' not in sys.modules")
+    subprocess.run([sys.executable, "-c", code], check=True, cwd=Path(__file__).parents[1])
 
 
 @pytest.mark.parametrize("unit, si, scale", [

@@ -13,13 +13,10 @@ import numpy as np
 
 from .declaration import Argument, Function, Tool
 from .errors import CellError, ErrorValue, InvalidInput, NoResult, NotAvailable, UffuncsError
-from .grids import Grid, elements, grid
+from .grids import PIECE, Grid, elements, grid
 from .reading import RANGES, flattened, is_blank, make_reader, unwrapped
 from .reasons import no_result_reason
 from .registry import find
-
-#: Rows computed at a time: the arrays of one piece stay in the processor's cache.
-PIECE = 16384
 
 
 
@@ -209,17 +206,19 @@ class CompiledFunction:
             good = np.ones(shape, bool)
             good[tuple(np.array(list(errors)).T)] = False
             keep = np.flatnonzero(good)
-            self._pieces([f if g.single else f[keep] for f, g in zip(flat, grids)], grids, keep, out, failed)
+            finite = self._pieces([f if g.single else f[keep] for f, g in zip(flat, grids)], grids, keep, out, failed)
         else:
-            self._pieces(flat, grids, None, out, failed)
-        out += 0.0  # no negative zero
-        bad = np.flatnonzero(~np.isfinite(out))
-        for index in bad:
+            finite = self._pieces(flat, grids, None, out, failed)
+        for index in () if finite else np.flatnonzero(~np.isfinite(out)):
             errors.setdefault(divmod(int(index), shape[1]), failed.get(int(index), _NO_RESULT))
         return out.reshape(shape), errors
 
-    def _pieces(self, flat: list, grids: list, keep: np.ndarray | None, out: np.ndarray, failed: dict):
-        """Compute `out[keep]` piece by piece; text arguments are fixed within a piece. What a body refuses goes to `failed`."""
+    def _pieces(self, flat: list, grids: list, keep: np.ndarray | None, out: np.ndarray, failed: dict) -> bool:
+        """Compute `out[keep]` piece by piece, with text arguments fixed within a piece; tells whether all of it is finite.
+
+        What a body refuses goes to `failed`.
+        """
+        finite = True
         size = len(out) if keep is None else len(keep)
         texts = [i for i, g in enumerate(grids) if not g.single and g.is_text]
         if texts:
@@ -229,13 +228,14 @@ class CompiledFunction:
                 part = [f if g.single else f[rows] for f, g in zip(flat, grids)]
                 for i, text in zip(texts, kind):
                     part[i] = text
-                self._compute(part, [g.single or i in texts for i, g in enumerate(grids)], len(rows), out,
-                              rows if keep is None else keep[rows], failed)
-        else:
-            self._compute(flat, [g.single for g in grids], size, out, keep, failed)
+                finite &= self._compute(part, [g.single or i in texts for i, g in enumerate(grids)], len(rows), out,
+                                        rows if keep is None else keep[rows], failed)
+            return finite
+        return self._compute(flat, [g.single for g in grids], size, out, keep, failed)
 
     def _compute(self, flat: list, single: list[bool], size: int, out: np.ndarray, keep: np.ndarray | None,
-                 failed: dict):
+                 failed: dict) -> bool:
+        finite = True
         scale_of = [(a.quantity.scale, a.quantity.offset) if a.quantity else (1.0, 0.0) for a in self.record.arguments]
         for start in range(0, size, PIECE):
             part = slice(start, min(start + PIECE, size))
@@ -248,8 +248,11 @@ class CompiledFunction:
                     values.append(x + offset if offset else x)
             places = part if keep is None else keep[part]
             try:
-                out[places] = self._body(values)
+                result = self._body(values) + 0.0  # no negative zero
+                finite &= bool(np.isfinite(result).all())
+                out[places] = result
             except UffuncsError:  # a body that refuses the whole array: one by one, so that only the bad ones fail
+                finite = False
                 numbers = np.arange(part.start, part.stop) if keep is None else keep[part]
                 for n, place in enumerate(numbers):
                     try:
@@ -257,6 +260,7 @@ class CompiledFunction:
                                                  for v, fixed in zip(values, single)])
                     except UffuncsError as error:
                         failed[int(place)] = ErrorValue(error.code, f"{self.name}: {error}")
+        return finite
 
     def _body(self, values: list) -> np.ndarray | float:
         with np.errstate(all="ignore"):

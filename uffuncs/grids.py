@@ -12,6 +12,9 @@ from .errors import ErrorValue, InvalidInput, UffuncsError
 from .quantities import Quantity
 from .reading import RANGES
 
+#: Rows worked on at a time: the arrays of one piece stay in the processor's cache.
+PIECE = 16384
+
 
 class Grid:
     """One argument over a range: worksheet numbers (or texts), or one SI value for every element."""
@@ -78,10 +81,10 @@ def _mixed_grid(argument: Argument, read: Callable, rows: Sequence[Sequence], wi
 
 
 def _outside(read: Callable, numbers: np.ndarray, q: Quantity) -> dict[tuple[int, int], ErrorValue]:
-    """The elements outside the bounds; the common case of none costs two passes."""
-    if numbers.size == 0:
-        return {}
-    if q.low <= numbers.min() and numbers.max() <= q.high and not q.whole:  # false where there is a NaN
+    """The elements outside the bounds; the common case of none costs one pass, piece by piece."""
+    flat = numbers.reshape(-1)
+    pieces = (flat[start:start + PIECE] for start in range(0, flat.size, PIECE))
+    if not q.whole and all(q.low <= p.min() and p.max() <= q.high for p in pieces):  # false where there is a NaN
         return {}
     bad = ~((numbers >= q.low) & (numbers <= q.high))
     if q.whole:

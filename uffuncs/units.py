@@ -81,6 +81,30 @@ WORKSHEET_UNITS: dict[str, tuple[str, float, float]] = {
     "money/year": ("money/s", 1.0 / YEAR, 0.0),
 }
 
+_INCH, _FOOT, _US_GALLON, _POUND_FORCE = 0.0254, 0.3048, 3.785411784e-3, 4.4482216152605  # exact by definition
+_PSI, _GFD = _POUND_FORCE / _INCH**2, _US_GALLON / _FOOT**2 / (24 * HOUR)
+
+#: The texts met most, in the same form, so that most workbooks never load pint.
+COMMON_UNITS: dict[str, tuple[str, float, float]] = {
+    "%": ("-", 0.01, 0.0),
+    "LMH": ("m/s", 1e-3 / HOUR, 0.0),
+    "gfd": ("m/s", _GFD, 0.0),
+    "LMH/bar": ("m/(s·Pa)", 1e-8 / HOUR, 0.0),
+    "gfd/psi": ("m/(s·Pa)", _GFD / _PSI, 0.0),
+    "psi": ("Pa", _PSI, 0.0),
+    "kPa": ("Pa", 1e3, 0.0),
+    "MPa": ("Pa", 1e6, 0.0),
+    "mbar": ("Pa", 100.0, 0.0),
+    "cP": ("Pa·s", 1e-3, 0.0),
+    "degC": ("K", 1.0, 273.15),
+    "degF": ("K", 5 / 9, 459.67 * 5 / 9),
+    "m3/h": ("m³/s", 1.0 / HOUR, 0.0),
+    "gpm": ("m³/s", _US_GALLON / 60, 0.0),
+    "m2": ("m²", 1.0, 0.0),
+    "g/l": ("kg/m³", 1.0, 0.0),
+    "mg/L": ("kg/m³", 1e-3, 0.0),
+}
+
 #: Spellings of the trade that pint does not know.
 TRADE_DEFINITIONS = (
     "LMH = liter / meter**2 / hour = _ = lmh",
@@ -149,16 +173,16 @@ def compile_unit(text: str, si_unit: str, absolute: bool = False, worksheet: str
         The unit is unknown, has another dimension, or is a gauge pressure where an absolute one is meant (or the reverse).
     """
     text = text.strip()
-    known = WORKSHEET_UNITS.get(text)
     difference = worksheet == "°C difference"
-    if known is not None and known[0] == si_unit and not (si_unit == "Pa" and absolute):
-        return known[1], 0.0 if difference else known[2]
-    if "ⁿ" in si_unit:
+    if "ⁿ" in si_unit and text not in WORKSHEET_UNITS:
         raise InvalidInput(f"give a plain number in {worksheet or si_unit}: its unit depends on an exponent")
     if si_unit == "Pa":
         text = _pressure_reference(text, absolute)
     if si_unit == "K":
         text = _temperature(text)
+    known = _known(text)
+    if known is not None and known[0] == si_unit:
+        return known[1], 0.0 if difference else known[2]
     scale, offset = _to_base(text)
     kind = "angle" if si_unit == "rad" else "number"
     if _dimension(text) != _dimension(si_unit) or _pure_kind(text) not in ("", kind):
@@ -166,6 +190,10 @@ def compile_unit(text: str, si_unit: str, absolute: bool = False, worksheet: str
     if si_unit == "rad" and _pure_kind(text) != "angle":
         raise InvalidInput(f"the unit '{text[:40]}' is no angle; give degrees, for example '30 deg'")
     return scale / _to_base(si_unit)[0], 0.0 if difference else offset
+
+
+def _known(text: str) -> tuple[str, float, float] | None:
+    return WORKSHEET_UNITS.get(text) or COMMON_UNITS.get(text)
 
 
 def convert(value: float, from_unit: str, to_unit: str) -> float:
@@ -186,6 +214,9 @@ def convert(value: float, from_unit: str, to_unit: str) -> float:
     plain = [(g or a)[1] if (g or a) else u.strip() for (g, a), u in zip(pressures, (from_unit, to_unit))]
     if any(u in _TEMPERATURES for u in plain):
         plain = [_temperature(u) for u in plain]
+    known = [_known(u) for u in plain]
+    if None not in known and known[0][0] == known[1][0] and "°C difference" not in plain:
+        return _converted(value, *known[0][1:], *known[1][1:])
     if any(_dimension_of_pressure(u) for u in plain):
         plain = [_KILOGRAM_FORCE.sub("kgf/cm**2", u) for u in plain]
     (scale_in, offset_in), (scale_out, offset_out) = map(_to_base, plain)
@@ -193,6 +224,10 @@ def convert(value: float, from_unit: str, to_unit: str) -> float:
         raise InvalidInput(f"'{from_unit}' and '{to_unit}' measure different things")
     if (offset_in and _is_difference(plain[1])) or (offset_out and _is_difference(plain[0])):
         raise InvalidInput(f"of '{from_unit}' and '{to_unit}' one is a temperature, the other a difference of temperatures")
+    return _converted(value, scale_in, offset_in, scale_out, offset_out)
+
+
+def _converted(value: float, scale_in: float, offset_in: float, scale_out: float, offset_out: float) -> float:
     result = (scale_in * value + offset_in - offset_out) / scale_out
     # Zero points are far away on the kelvin scale: nine decimals of a temperature are all that a float holds of it.
     return round(result, 9) if offset_in or offset_out else result
@@ -234,9 +269,10 @@ def known_unit(text: str) -> None:
         An unknown unit.
     """
     text = text.strip()
-    if text not in WORKSHEET_UNITS and text not in _TEMPERATURES:
+    if _known(text) is None and text not in _TEMPERATURES:
         pressure = _GAUGE.fullmatch(text) or _ABSOLUTE.fullmatch(text)
-        _to_base(pressure[1] if pressure else text)
+        if _known(pressure[1] if pressure else text) is None:
+            _to_base(pressure[1] if pressure else text)
 
 
 def _pressure_reference(text: str, absolute: bool) -> str:
