@@ -25,7 +25,7 @@ def counts() -> Counter:
 def test_the_counts_of_checks():
     best = counts()
     said = (f"Of {best.total()} functions {best['printed']} have a value read in print, {best['library']} more one of a general library, "
-            f"{best['derived']} more one derived, {best['memory']} one from memory.")
+            f"{best['derived']} more one derived, and {best['memory']} only one from memory.")
     assert said in re.sub(r"\s+", " ", README), said
 
 
