@@ -1,5 +1,9 @@
 """A declaration is read once and completely; a wrong one is a named error at import."""
 
+import subprocess
+import sys
+from pathlib import Path
+
 import numpy as np
 import pytest
 
@@ -132,3 +136,9 @@ def test_functions_are_attributes_of_the_package():
         uffuncs.no_such_function
     assert isinstance(uffuncs.flux_darcy(np.array([1e5, 2e5]), 1e-3, 1e13), np.ndarray)
     assert Column is not Number
+
+
+def test_the_registry_is_whole_at_the_first_look_and_the_second():
+    code = "from uffuncs.registry import functions; a = set(functions()); from uffuncs import cell; assert a == set(functions()); print(len(a))"
+    done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True, cwd=Path(__file__).parents[1])
+    assert int(done.stdout) == len(functions())

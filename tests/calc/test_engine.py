@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import socket
+import sys
 import threading
 from pathlib import Path
 
@@ -10,6 +11,10 @@ import openpyxl
 import pytest
 from openpyxl.workbook.defined_name import DefinedName
 from openpyxl.worksheet.formula import ArrayFormula
+
+sys.path.append(str(Path(__file__).parents[1] / "headless"))
+
+from headless_books import packed, parts_of, sheet_xml
 
 from uffuncs.calc import engine as calc_engine
 from uffuncs.calc.office import OVERRIDE, Office
@@ -107,6 +112,33 @@ def test_names_renamed_as_for_an_older_version(both, monkeypatch):
     assert shown(folder / "older.xlsx") == values["calc"]
     assert "the values are those of LibreOffice 7.4" in report.notes
     assert openpyxl.load_workbook(folder / "older.xlsx").active["B2"].value == FORMULAS["B2"]
+
+
+def test_formulas_as_a_program_saves_them(office, folder):
+    """Shared formulas, dynamic arrays, prefixes, and a workbook that may hold macros."""
+    shared = ' t="shared" ref="B1:B2" si="0"'
+    rows = (
+        f'<row r="1"><c r="A1"><v>1</v></c><c r="B1"><f{shared}>A1*2</f></c>'
+        '<c r="C1" cm="1"><f t="array" ref="C1:C2">UF_FLUX_DARCY(A1:A2,1,5E12)</f><v>7</v></c>'
+        '<c r="D1"><f>[1]!UF_FLUX_DARCY(A1,1,5E12)</f><v>7</v></c></row>'
+        '<row r="2"><c r="A2"><v>2</v></c><c r="B2"><f t="shared" si="0"/><v>7</v></c></row>'
+    )
+    main = b"vnd.openxmlformats-officedocument.spreadsheetml.sheet.main"
+    parts = {name: data.encode() for name, data in parts_of({"S": sheet_xml(rows)}).items()}
+    types = parts["[Content_Types].xml"].replace(main, b"vnd.ms-excel.sheet.macroEnabled.main")
+    source = folder / "macros.xlsm"
+    source.write_bytes(packed(parts | {"[Content_Types].xml": types}))
+    report = recalculate(source, folder / "macros_out.xlsm", engine="calc")
+    assert not report.errors and "1 dynamic arrays keep the ranges they had" in report.notes
+    assert shown(folder / "macros_out.xlsm") == {
+        "A1": 1,
+        "B1": 2,
+        "C1": 72,
+        "D1": 72,
+        "A2": 2,
+        "B2": 4,
+        "C2": 144,
+    }
 
 
 def test_a_difference_is_told(both, monkeypatch):

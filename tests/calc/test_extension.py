@@ -58,7 +58,7 @@ def test_what_runs_inside_imports_nothing_else():
     folder = inside.__path__[0]
     for module in INSIDE:
         with open(f"{folder}/{module}.py", encoding="utf-8") as file:
-            tree = ast.parse(file.read())
+            tree = ast.parse(file.read(), feature_version=(3, 8))
         for node in tree.body:
             imported = [a.name for a in node.names] if isinstance(node, ast.Import) else []
             if isinstance(node, ast.ImportFrom) and node.level == 0:

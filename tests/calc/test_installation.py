@@ -21,6 +21,8 @@ from uffuncs.calc.office import OVERRIDE, Office, clean_environment
 
 NOBODY = 65534
 
+posix = pytest.mark.skipif(os.name == "nt", reason="shell scripts play the program")
+
 
 @pytest.fixture
 def settings(tmp_path, monkeypatch):
@@ -95,6 +97,21 @@ def test_install_examine_use_and_uninstall(office, profile, settings):
     assert "the extension is not installed" in texts(calc.doctor(profile))
 
 
+def test_examined_while_it_runs(office, profile, settings):
+    calc.install(profile)
+    lock = profile / ".lock"
+    lock.write_text("")
+    try:
+        told = texts(calc.doctor(profile), good=True)
+        assert "cannot be told: LibreOffice is running; close all its windows" in told
+        assert "that Python answers in a worker process" in told
+        with pytest.raises(calc.OfficeProblem, match="LibreOffice is running"):
+            calc.uninstall(profile)
+        assert settings.exists()
+    finally:
+        lock.unlink()
+
+
 def test_what_is_wrong_is_told(office, profile, settings, monkeypatch):
     calc.install(profile)
     found = own_settings()
@@ -129,10 +146,14 @@ def test_no_libreoffice(settings, tmp_path, monkeypatch):
     monkeypatch.setenv(OVERRIDE, str(tmp_path))
     with pytest.raises(calc.OfficeProblem, match="LibreOffice is not found"):
         calc.install()
-    assert texts(calc.doctor(), good=False).startswith("Calc: LibreOffice is not found")
+    assert texts(calc.doctor(), good=True).startswith("Calc: LibreOffice is not found")
     assert not settings.exists()
+    configuration.write_configuration(own_settings())
+    assert texts(calc.doctor(), good=False).startswith("Calc: LibreOffice is not found")
+    assert calc.uninstall()[-1] == f"{settings} is removed" and not settings.exists()
 
 
+@posix
 def test_too_old(settings, monkeypatch, tmp_path):
     program = tmp_path / "soffice"
     program.write_text("#!/bin/sh\necho 'LibreOffice 6.4.7.2 40(Build:2)'\n")
@@ -143,6 +164,7 @@ def test_too_old(settings, monkeypatch, tmp_path):
     assert "too old" in texts(calc.doctor(), good=False)
 
 
+@posix
 @pytest.mark.parametrize(
     "told, shown",
     [

@@ -26,6 +26,7 @@ from uffuncs.calc.installation import own_settings
 from uffuncs.calc.names import add_in_functions
 from uffuncs.cell import call
 
+posix = pytest.mark.skipif(os.name == "nt", reason="kills by signals, and lets /bin/false play a Python")
 SIGNATURES = {f.name: [name for name, _ in f.arguments] for f in add_in_functions()}
 DARCY = ("UF_FLUX_DARCY", (2.0, 1.002, 5e12, None, None, None, None))
 
@@ -71,6 +72,7 @@ def test_values_texts_blocks_and_errors():
         worker.stop()
 
 
+@posix
 def test_started_again_once_when_killed(worker, misbehaving):
     worker.call(*DARCY)
     first = worker.process.pid
@@ -159,6 +161,7 @@ def test_without_settings(runner):
     assert reason[len("uffuncs: ") :] in Path(configuration.problem_path()).read_text(encoding="utf-8")
 
 
+@posix
 @pytest.mark.parametrize(
     "python, told",
     [
@@ -177,6 +180,7 @@ def test_a_python_without_the_library(runner):
     assert "No module named 'uffuncs'" in runner.call("UF_WHY", ())[0][0]
 
 
+@posix
 def test_many_cells_do_not_try_again_at_once(runner, monkeypatch):
     configuration.write_configuration(own_settings() | {"python": "/bin/false", "mode": configuration.WORKER})
     runner.call(*DARCY)
@@ -187,6 +191,17 @@ def test_many_cells_do_not_try_again_at_once(runner, monkeypatch):
     runner.until = 0.0
     configuration.write_configuration(own_settings() | {"mode": configuration.WORKER})
     assert runner.call(*DARCY)[0][0] > 0
+
+
+@posix
+def test_a_python_that_vanishes(runner):
+    configuration.write_configuration(own_settings() | {"mode": configuration.WORKER})
+    assert runner.call(*DARCY)[0][0] > 0
+    runner.target.configuration["python"] = "/bin/false"
+    os.kill(runner.target.process.pid, signal.SIGKILL)
+    started = time.monotonic()
+    assert {error(runner.call(*DARCY)) for _ in range(1000)} == {"#NAME?"}
+    assert time.monotonic() - started < 2
 
 
 @pytest.mark.parametrize("text", ["", "[]", "{}", '{"python": 3}', "no json"])

@@ -5,6 +5,7 @@ from __future__ import annotations
 import json
 import os
 import signal
+import threading
 import time
 from contextlib import contextmanager
 from pathlib import Path
@@ -15,7 +16,7 @@ from misbehaving import Misbehaving
 
 from uffuncs.calc.inside.configuration import IN_PROCESS, WORKER
 
-CELLS = 2000
+CELLS = 3000
 NUM, VALUE, NAME = 503, 519, 525
 
 linux = pytest.mark.skipif(
@@ -45,15 +46,19 @@ def entered(sheet, place: str, formula: str):
 def test_killed_in_mid_run(office, tmp_path):
     with program(office, tmp_path, mode=WORKER) as (session, sheet):
         assert session.children() == []  # nothing is started before it is needed
-        for r in range(CELLS):
-            sheet.getCellByPosition(0, r).setValue(1 + r / CELLS)
-        formulas = tuple((f"=UF_FLUX_DARCY(A{r + 1};1;5E12)",) for r in range(CELLS))
-        sheet.getCellRangeByName(f"B1:B{CELLS // 2}").setFormulaArray(formulas[: CELLS // 2])
+        sheet.getCellRangeByName(f"A1:A{CELLS}").setDataArray(tuple((1 + r / CELLS,) for r in range(CELLS)))
+        area = sheet.getCellRangeByName(f"B1:B{CELLS}")
+        area.setFormulaArray(tuple((f"=UF_FLUX_DARCY(A{r + 1};1;5E12)",) for r in range(CELLS)))
+        document = next(iter(session.desktop.Components))
+        document.calculateAll()
         first = session.children()
-        os.kill(first[0], signal.SIGKILL)
-        sheet.getCellRangeByName(f"B{CELLS // 2 + 1}:B{CELLS}").setFormulaArray(formulas[CELLS // 2 :])
-        values = [row[0] for row in sheet.getCellRangeByName(f"B1:B{CELLS}").getDataArray()]
-        assert values == [pytest.approx(72 * (1 + r / CELLS)) for r in range(CELLS)]
+        killing = threading.Timer(0.05, os.kill, (first[0], signal.SIGKILL))
+        killing.start()
+        document.calculateAll()
+        killing.join()
+        assert [row[0] for row in area.getDataArray()] == [
+            pytest.approx(72 * (1 + r / CELLS)) for r in range(CELLS)
+        ]
         second = session.children()
         assert len(first) == len(second) == 1 and first != second
     deadline = time.monotonic() + 5

@@ -33,6 +33,7 @@ from .office import (
 from .renaming import plain_names, programmatic_names, renamed_package
 
 SECONDS = 600.0
+CALL_SECONDS = 300.0  # nobody waits at a window
 FILTER = "xlsx:Calc MS Excel 2007 XML"
 PREFIXES = re.compile(r"^(?:_xlfn\.|_xlws\.|_xll\.)+", re.IGNORECASE)
 VOLATILE = re.compile(r"\b(?:RAND|RANDBETWEEN|RANDARRAY|NOW|TODAY)\(", re.IGNORECASE)
@@ -147,13 +148,15 @@ def _write_profile(folder: Path) -> None:
 def _write_settings(path: Path) -> None:
     import json
 
-    path.write_text(json.dumps(own_settings()), encoding="utf-8")
+    path.write_text(json.dumps(own_settings() | {"seconds": CALL_SECONDS}), encoding="utf-8")
 
 
 def _read_values(model: Model, saved: Package, evaluation: Evaluation) -> None:
     """The values of the formula cells and of the cells that array formulas cover."""
+    from ..headless.recalculate import _SharedStrings
+
     structure = read_structure(saved)
-    strings = _Strings(saved, structure)
+    strings = _SharedStrings(Model(saved, structure, []))
     lost = []
     for sheet in model.sheets:
         wanted = [cell for cell in sheet.cells if cell.kind not in KEPT]
@@ -184,6 +187,8 @@ def _read_values(model: Model, saved: Package, evaluation: Evaluation) -> None:
                     area[2] - area[0] + 1,
                     area[3] - area[1] + 1,
                 )
+    if evaluation.spills:
+        evaluation.notes.append(f"{len(evaluation.spills):,} dynamic arrays keep the ranges they had")
     if lost:
         evaluation.notes.append(
             f"{len(lost):,} formulas were not read by LibreOffice and keep their values; first {lost[0]}"
@@ -195,20 +200,6 @@ def _as_cell_value(value: object) -> object:
     if isinstance(value, str) and re.fullmatch(r"Err:\d+", value):
         return ErrorValue("#VALUE!", f"LibreOffice gives {value}")
     return value
-
-
-class _Strings:
-    """The shared strings of the saved workbook, read when a cell points into them."""
-
-    def __init__(self, package: Package, structure):
-        from types import SimpleNamespace
-
-        from ..headless.recalculate import _SharedStrings
-
-        self.read = _SharedStrings(SimpleNamespace(package=package, structure=structure))
-
-    def __call__(self, index: str) -> str:
-        return self.read(index)
 
 
 def _find_unknown(model: Model, evaluation: Evaluation) -> None:

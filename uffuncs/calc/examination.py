@@ -14,7 +14,7 @@ from .inside.configuration import WORKER, Problem, configuration_path, problem_p
 from .inside.values import error_name
 from .installation import OLDEST, installed_version
 from .names import add_in_functions
-from .office import NAMES_UNCHANGED, Office, OfficeProblem, find_office, run
+from .office import NAMES_UNCHANGED, Office, OfficeIsRunning, OfficeProblem, find_office, run
 
 INSTALL = "run: uffuncs install calc"
 
@@ -47,7 +47,7 @@ def doctor(profile: Path | None = None) -> list[Finding]:
         office = find_office()
         version = office.version()
     except OfficeProblem as problem:
-        return [Finding(f"Calc: {problem}", good=False)]
+        return [Finding(f"Calc: {problem}", good=not _is_expected())]
     found = [_of_version(office, version)]
     installed = _of_extension(office, profile, found)
     settings = _of_settings(found, installed)
@@ -57,6 +57,11 @@ def doctor(profile: Path | None = None) -> list[Finding]:
     if installed:
         _of_last_problem(found)
     return [Finding(f"Calc: {f.text}", f.good) for f in found]
+
+
+def _is_expected() -> bool:
+    """Whether somebody has installed the add-in; before that a missing LibreOffice is nothing wrong."""
+    return os.path.exists(configuration_path())
 
 
 def _of_version(office: Office, version: tuple[int, int]) -> Finding:
@@ -76,7 +81,8 @@ def _of_extension(office: Office, profile: Path | None, found: list[Finding]) ->
     try:
         version = installed_version(office, profile)
     except OfficeProblem as problem:
-        found.append(Finding(f"whether the extension is installed cannot be told: {problem}", good=False))
+        told = f"whether the extension is installed cannot be told: {problem}"
+        found.append(Finding(told, good=isinstance(problem, OfficeIsRunning) or not _is_expected()))
         return False
     if version is None:
         found.append(Finding(f"the extension is not installed; {INSTALL}"))

@@ -65,6 +65,7 @@ JOBS = """<?xml version="1.0" encoding="UTF-8"?>
   <node oor:name="Jobs">
     <node oor:name="{job}" oor:op="replace">
       <prop oor:name="Service"><value>{job}</value></prop>
+      <prop oor:name="Context"><value>com.sun.star.sheet.SpreadsheetDocument</value></prop>
     </node>
   </node>
   <node oor:name="Events">

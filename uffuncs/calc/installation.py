@@ -13,7 +13,7 @@ from .extension import FILE_NAME, OLDEST_LIBREOFFICE, extension
 from .inside.configuration import AUTOMATIC, TIME_LIMIT, configuration_path, problem_path, write_configuration
 from .inside.running import abi
 from .names import IDENTIFIER
-from .office import NAMES_UNCHANGED, Office, OfficeProblem, find_office, profile_option, run
+from .office import NAMES_UNCHANGED, Office, OfficeIsRunning, OfficeProblem, find_office, profile_option, run
 
 OLDEST = tuple(map(int, OLDEST_LIBREOFFICE.split(".")))
 SECONDS = 180.0
@@ -88,17 +88,26 @@ def uninstall(profile: Path | None = None) -> list[str]:
     """
     done = []
     try:
-        _unopkg(find_office(), profile, "remove", IDENTIFIER)
-        done.append("the extension is removed from LibreOffice")
+        office = find_office()
     except OfficeProblem as problem:
-        if ABSENT not in str(problem):
-            raise
-        done.append("the extension was not installed in LibreOffice")
+        done.append(str(problem))
+    else:
+        done.append(_without_extension(office, profile))
     for path in map(Path, (configuration_path(), problem_path())):
         if path.is_file():
             path.unlink()
             done.append(f"{path} is removed")
     return done
+
+
+def _without_extension(office: Office, profile: Path | None) -> str:
+    try:
+        _unopkg(office, profile, "remove", IDENTIFIER)
+    except OfficeProblem as problem:
+        if ABSENT not in str(problem):
+            raise
+        return "the extension was not installed in LibreOffice"
+    return "the extension is removed from LibreOffice"
 
 
 def installed_version(office: Office, profile: Path | None = None) -> str | None:
@@ -177,7 +186,7 @@ def _unopkg(office: Office, profile: Path | None, *arguments) -> str:
         return done.stdout
     told = " ".join((done.stderr + done.stdout).split())
     if "lock file" in told:
-        raise OfficeProblem("LibreOffice is running; close all its windows and try again")
+        raise OfficeIsRunning("LibreOffice is running; close all its windows and try again")
     if "as root" in told:
         raise OfficeProblem("LibreOffice keeps no extensions for the user root; run this as an ordinary user")
     raise OfficeProblem(f"unopkg {arguments[0]} has failed: {told[:400] or f'status {done.returncode}'}")

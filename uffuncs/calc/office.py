@@ -28,6 +28,10 @@ class OfficeProblem(Exception):
     """What is wrong with LibreOffice, in plain words."""
 
 
+class OfficeIsRunning(OfficeProblem):
+    """Extensions cannot be looked at while the program runs."""
+
+
 @dataclass(frozen=True)
 class Office:
     """An installation of LibreOffice."""

@@ -15,6 +15,7 @@ from .worker_link import SHORTEST_LIMIT, Worker
 
 #: Seconds for which a problem is taken as unsolved: ten thousand cells must not each try again.
 RETRY = 5.0
+STALE = "the add-in was built from another version of uffuncs; run: uffuncs install calc"
 
 
 def abi():
@@ -36,21 +37,19 @@ class Runner:
         try:
             target = self.target or self._reached()
             if target.stale and name in target.stale:
-                raise Problem(
-                    "the add-in was built from another version of uffuncs; run: uffuncs install calc"
-                )
+                return self._failed(name, STALE)
             return target.call(name, cells)
         except Problem as problem:
+            self.target, self.until = None, time.monotonic() + RETRY
             return self._failed(name, str(problem))
         except BaseException:  # nothing may get out into the program
             return error_block("#VALUE!")
 
     def _reached(self):
-        if self.problem and time.monotonic() < self.until:
+        if time.monotonic() < self.until:
             raise Problem(self.problem)
         configuration = read_configuration()
         mode = configuration.get("mode", AUTOMATIC)
-        self.target = None
         if mode == IN_PROCESS or mode != WORKER and fits(configuration):
             try:
                 self.target = InProcess(configuration, self.signatures)
@@ -67,7 +66,7 @@ class Runner:
     def _failed(self, name, text):
         if text != self.problem:
             note_problem(text)
-        self.problem, self.until = text, time.monotonic() + RETRY
+        self.problem = text
         if name == "UF_WHY":
             return (("uffuncs: " + text,),)
         return error_block("#NAME?")
