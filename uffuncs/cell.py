@@ -19,7 +19,6 @@ from .reasons import no_result_reason
 from .registry import find
 
 
-
 def call(name: str, cells: Sequence) -> object:
     """The value of a worksheet function for cell values; never raises.
 

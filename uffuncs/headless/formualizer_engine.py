@@ -36,8 +36,11 @@ class FormualizerEngine:
         outcome = []
 
         def work():
+            import numpy as np
+
             try:
-                outcome.append(run.evaluate())
+                with np.errstate(all="ignore"):  # what has no value becomes an error value, not a line on the terminal
+                    outcome.append(run.evaluate())
             except BaseException as error:  # handed to the calling thread
                 outcome.append(error)
 

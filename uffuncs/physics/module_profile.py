@@ -39,7 +39,6 @@ _ARGUMENTS = {
 _NOT_RUN_ON_UNITS = "the integration along the module is done in plain numbers"
 
 
-
 def _no_osmotic_law(
     feed_concentration, intrinsic_rejection, first_coefficient, second_coefficient, third_coefficient
 ):

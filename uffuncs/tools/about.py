@@ -14,7 +14,6 @@ from ..version import __version__
 from ._cells import FUNCTION_NAME, OWN, element_by_element, function_named
 
 
-
 @cell_tool(
     arguments=[FUNCTION_NAME],
     variadic=True,
