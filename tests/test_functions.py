@@ -11,6 +11,7 @@ import pytest
 from tests.compare import same
 from tests.examples import ELEMENTWISE, FUNCTIONS, example, given_numbers
 from uffuncs.cell import call, compile_function
+from uffuncs.declaration import Function
 from uffuncs.errors import ErrorValue
 
 NUMERIC = [(r, a) for r in FUNCTIONS for a in r.arguments if a.kind == "number"]
@@ -190,3 +191,37 @@ def test_dimensions(record, monkeypatch):
 @pytest.mark.parametrize("record", [r for r in FUNCTIONS if r.dimensional], ids=by_name)
 def test_why_a_body_is_not_run_on_quantities_is_said(record):
     assert len(record.dimensional) > 10
+
+
+#: Reasons that speak of constants with a unit; all other bodies only compute in plain numbers.
+UNITS_OF_THEIR_OWN = ("own units", "unit of the", "table of values", "from a table", "bound water", "per year", "normal integral", "molar mass")
+#: Other sizes for the base units, prime to one another, so that no two dimensions stand for each other.
+FACTORS = {"[length]": 1.7, "[mass]": 2.3, "[time]": 1.3, "[temperature]": 1.9, "[substance]": 3.1, "[money]": 2.9}
+
+
+def factor(si_unit: str) -> float:
+    from uffuncs.units import _plain, _registry
+
+    dimensions = _registry().Unit(_plain(si_unit)).dimensionality
+    return math.prod(FACTORS[name] ** power for name, power in dimensions.items())
+
+
+def in_plain_numbers(record: Function) -> bool:
+    units = [a.quantity.si_unit for a in record.arguments if a.quantity]
+    return bool(record.dimensional) and not any(w in record.dimensional for w in UNITS_OF_THEIR_OWN) and "ⁿ" not in "".join(units)
+
+
+@pytest.mark.parametrize("record", filter(in_plain_numbers, FUNCTIONS), ids=by_name)
+def test_bodies_in_plain_numbers_are_sound_in_dimension(record):
+    """Measured in other base units, the arguments give the same result in these units."""
+    values = compile_function(record.worksheet_name).si_values(example(record))
+    scaled = [v if a.quantity is None or v is None else v * factor(a.quantity.si_unit) for a, v in zip(record.arguments, values)]
+    with np.errstate(all="ignore"):
+        plain, other = record.python(*values), record.python(*scaled)
+    results = record.column_quantities(values) if record.block else record.results
+    for n, (a, b) in enumerate(zip(plain, other) if record.block else [(plain, other)]):
+        if isinstance(a, list) and a and isinstance(a[0], str):
+            assert a == b
+            continue
+        expected = np.asarray(a, float) * factor(results[min(n, len(results) - 1)].si_unit)
+        assert np.asarray(b, float) == pytest.approx(expected, rel=1e-6, abs=1e-9 * float(np.max(np.abs(expected)))), results[min(n, len(results) - 1)].name
