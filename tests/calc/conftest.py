@@ -33,6 +33,15 @@ def office() -> Office:
     return found
 
 
+@pytest.fixture
+def bare_python(tmp_path) -> str:
+    """This Python without its installed packages, so without the library, wherever that is installed."""
+    script = tmp_path / "bare_python"
+    script.write_text(f'#!/bin/sh\nexec "{sys.executable}" -S "$@"\n')
+    script.chmod(0o755)
+    return str(script)
+
+
 @pytest.fixture(scope="module")
 def folder():
     """A folder for profiles; short, because a pipe's name has to fit into a socket address."""

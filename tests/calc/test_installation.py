@@ -112,7 +112,8 @@ def test_examined_while_it_runs(office, profile, settings):
         lock.unlink()
 
 
-def test_what_is_wrong_is_told(office, profile, settings, monkeypatch):
+@posix
+def test_what_is_wrong_is_told(office, profile, settings, bare_python):
     calc.install(profile)
     found = own_settings()
 
@@ -120,7 +121,7 @@ def test_what_is_wrong_is_told(office, profile, settings, monkeypatch):
     assert "/nowhere/bin/python is gone, so every function shows #NAME?; run: uffuncs install calc" in texts(
         calc.doctor(profile), good=False
     )
-    configuration.write_configuration(found | {"paths": [], "abi": "another"})
+    configuration.write_configuration(found | {"python": bare_python, "paths": [], "abi": "another"})
     assert "No module named 'uffuncs'" in texts(calc.doctor(profile), good=False)
     configuration.write_configuration(found | {"mode": configuration.WORKER})
     assert "in a worker process, as the settings say" in texts(calc.doctor(profile), good=True)

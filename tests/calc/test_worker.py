@@ -175,8 +175,9 @@ def test_a_python_that_is_gone(runner, python, told):
     assert told in runner.call("UF_WHY", ())[0][0]
 
 
-def test_a_python_without_the_library(runner):
-    configuration.write_configuration(own_settings() | {"paths": [], "mode": configuration.WORKER})
+@posix
+def test_a_python_without_the_library(runner, bare_python):
+    configuration.write_configuration(own_settings() | {"python": bare_python, "paths": [], "mode": configuration.WORKER})
     assert "No module named 'uffuncs'" in runner.call("UF_WHY", ())[0][0]
 
 
