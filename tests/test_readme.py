@@ -47,3 +47,11 @@ def test_the_commands_stand_alone_on_their_lines():
     commands = re.findall(r"^python3 -m venv .*$", README, re.M)
     assert len(commands) == 2 and commands[0].endswith("uffuncs demo") and commands[1].endswith("pytest")
     assert "LICENSE" not in README
+
+
+def test_the_table_of_the_demo_is_the_workbook_s():
+    from uffuncs.demo import key_results
+
+    path = Path(__file__).parents[1] / "workbooks_demo" / "plant_design.xlsx"
+    for label, value, unit in key_results(path).rows:
+        assert re.search(rf"│ {re.escape(label)} +│ +{re.escape(value)} │ {re.escape(unit)} +│", README), (label, value, unit)
