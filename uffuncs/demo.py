@@ -20,7 +20,7 @@ class KeyResults:
 
 
 def builder(script: str = "plant_design"):
-    """The module that builds a demo workbook: inside an installed package, or beside the package in a checkout."""
+    """A module of the demo workbooks: inside an installed package, or beside the package in a checkout."""
     if find_spec("uffuncs.workbooks_demo"):
         return import_module(f"uffuncs.workbooks_demo.{script}")
     checkout = str(Path(__file__).resolve().parents[1])
@@ -60,7 +60,7 @@ def key_results(path: Path) -> KeyResults:
     """The key results of the workbook's summary sheet."""
     import openpyxl
 
-    layout = builder().SUMMARY
+    layout = builder("plant_results").SUMMARY
     sheet = openpyxl.load_workbook(path, data_only=True)[layout.sheet]
     rows = []
     for label, value, unit in sheet.iter_rows(layout.first_row, layout.last_row, layout.column, layout.column + 2):
