@@ -68,7 +68,7 @@ def test_other_systems_say_so_in_one_line():
             action()
         assert "\n" not in str(error.value)
     (finding,) = excel.doctor()
-    assert not finding.good and "needs Excel on Windows" in str(finding)
+    assert finding.good and "needs Excel on Windows" in str(finding)
 
 
 def test_install(windows):

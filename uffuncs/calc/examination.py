@@ -4,10 +4,10 @@ from __future__ import annotations
 
 import os
 import sys
-from dataclasses import dataclass
 from pathlib import Path
 from subprocess import TimeoutExpired
 
+from ..finding import Finding
 from ..version import __version__
 from .extension import OLDEST_LIBREOFFICE, extension_files
 from .inside.configuration import WORKER, Problem, configuration_path, problem_path, read_configuration
@@ -31,14 +31,6 @@ from inside.running import InProcess, fits
 found = read_configuration()
 print(InProcess(found, {}).call("UF_VERSION", ())[0][0] if fits(found) else "other")
 """
-
-
-@dataclass(frozen=True)
-class Finding:
-    """One sentence; `good` where nothing is to be done."""
-
-    text: str
-    good: bool = True
 
 
 def doctor(profile: Path | None = None) -> list[Finding]:

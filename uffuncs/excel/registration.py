@@ -14,8 +14,8 @@ import subprocess
 import sys
 from importlib import metadata
 from pathlib import Path
-from typing import NamedTuple
 
+from ..finding import Finding
 from ..version import __version__
 from .addin import ADDIN, CODE_PAGE, SETTINGS, build, xlwings_version
 from .errors import ExcelDoorError
@@ -31,16 +31,6 @@ _TRIAL = (
     "from uffuncs.excel.server import without_licensed_part as w;w();import pythoncom,xlwings;"
     "from uffuncs.excel import marked_functions as m;print(m.UF_VERSION()[0][0])"
 )
-
-
-class Finding(NamedTuple):
-    """One thing looked at, in plain words; `good` is false where something needs doing."""
-
-    good: bool
-    text: str
-
-    def __str__(self) -> str:
-        return self.text
 
 
 def install() -> list[str]:
@@ -94,7 +84,7 @@ def uninstall() -> list[str]:
 def doctor() -> list[Finding]:
     """What the add-in needs, looked at one by one; nothing is changed."""
     if sys.platform != "win32":
-        return [Finding(False, _ELSEWHERE)]
+        return [Finding(f"Excel: {_ELSEWHERE}")]  # nothing is wrong with that
     return [*_files(), *_python(), *_registry()]
 
 
@@ -151,10 +141,10 @@ def _settings() -> dict[str, str]:
 def _files() -> list[Finding]:
     addin, settings = start_folder() / ADDIN, _settings()
     if not addin.exists():
-        return [Finding(False, f"not installed: there is no {addin}; run `uffuncs install excel`")]
+        return [Finding(f"not installed: there is no {addin}; run `uffuncs install excel`", good=False)]
     if not settings:
-        return [Finding(False, f"there is no {start_folder() / SETTINGS}; run `uffuncs install excel`")]
-    findings = [Finding(True, f"installed: {addin}")]
+        return [Finding(f"there is no {start_folder() / SETTINGS}; run `uffuncs install excel`", good=False)]
+    findings = [Finding(f"installed: {addin}")]
     for what, built, now in (
         ("uffuncs", settings.get("version"), __version__),
         ("xlwings", settings.get("xlwings"), xlwings_version()),
@@ -162,9 +152,8 @@ def _files() -> list[Finding]:
         if built != now:
             findings.append(
                 Finding(
-                    False,
                     f"the add-in was built by {what} {built}, but {now} is installed; "
-                    "run `uffuncs install excel`",
+                    "run `uffuncs install excel`", good=False,
                 )
             )
     for name in ["interpreter", *(n for n in settings if n.startswith("library"))]:
@@ -172,10 +161,9 @@ def _files() -> list[Finding]:
         there = os.path.exists(path)
         findings.append(
             Finding(
-                there,
                 f"{name}: {path}"
                 if there
-                else f"{name}: there is no {path or 'path'}; run `uffuncs install excel`",
+                else f"{name}: there is no {path or 'path'}; run `uffuncs install excel`", good=there,
             )
         )
     return findings
@@ -195,24 +183,23 @@ def _python() -> list[Finding]:
             stdin=subprocess.DEVNULL,
         )
     except (OSError, subprocess.TimeoutExpired) as error:
-        return [Finding(False, f"Python cannot be started: {error}")]
+        return [Finding(f"Python cannot be started: {error}", good=False)]
     if tried.returncode == 0:
-        return [Finding(True, f"Python answers: uffuncs {tried.stdout.strip()}")]
+        return [Finding(f"Python answers: uffuncs {tried.stdout.strip()}")]
     reason = (tried.stderr.strip().splitlines() or [f"it ended with {tried.returncode}"])[-1]
-    return [Finding(False, f"Python cannot load the functions: {reason}")]
+    return [Finding(f"Python cannot load the functions: {reason}", good=False)]
 
 
 def _registry() -> list[Finding]:
     findings = []
     versions = _office_versions()
     if not versions:
-        findings.append(Finding(False, "no Excel has been started here by this user"))
+        findings.append(Finding("no Excel has been started here by this user", good=False))
     for version in versions:
         findings += [
             Finding(
-                False,
                 f"Excel {version} also opens {path}, another add-in of this name; "
-                "run `uffuncs install excel` to remove that entry",
+                "run `uffuncs install excel` to remove that entry", good=False,
             )
             for path in _others(version)
         ]
@@ -220,26 +207,24 @@ def _registry() -> list[Finding]:
             security = rf"{root}\{version}\Excel\Security"
             if _value(security, "DisableAllAddins") == 1:
                 findings.append(
-                    Finding(False, f"Excel {version} opens no add-ins at all: Trust Center, Add-ins")
+                    Finding(f"Excel {version} opens no add-ins at all: Trust Center, Add-ins", good=False)
                 )
             if _value(rf"{security}\Trusted Locations", "AllLocationsDisabled") == 1 and _warnings(
                 version
             ) in (3, 4):
                 findings.append(
                     Finding(
-                        False,
                         f"Excel {version} runs no unsigned macros and trusts no folder: Trust Center, "
-                        "Trusted Locations",
+                        "Trusted Locations", good=False,
                     )
                 )
         if any(ADDIN in data for data in _disabled(version)):
             findings.append(
                 Finding(
-                    False,
-                    f"Excel {version} has disabled the add-in after a crash: Options, Add-ins, Disabled",
+                    f"Excel {version} has disabled the add-in after a crash: Options, Add-ins, Disabled", good=False,
                 )
             )
-    return findings or [Finding(True, f"nothing in the registry is in the way (Excel {', '.join(versions)})")]
+    return findings or [Finding(f"nothing in the registry is in the way (Excel {', '.join(versions)})")]
 
 
 def _warnings(version: str) -> object:
