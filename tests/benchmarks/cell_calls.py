@@ -36,3 +36,4 @@ def rows():
         yield Row(f"1,000,000 rows, {label}: checked over bare NumPy body", checked / body, "times", 2)
     block = [[p] for p in pressure.tolist()]
     yield Row("1,000,000 rows as a spreadsheet's list of rows, in and out", seconds(lambda: call("UF_FLUX_DARCY", [block, 1, 5e12]), 3), "s")
+    yield Row("one cell of UF_SIEVING_PORE_SPREAD", microseconds(lambda: call("UF_SIEVING_PORE_SPREAD", [3, 5, 1.5])), "µs")

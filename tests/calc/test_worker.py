@@ -94,7 +94,7 @@ def test_a_call_that_hangs(worker, misbehaving, how):
     process = worker.process.pid
     started = time.monotonic()
     assert error(worker.call("UF_VERSION", ())) == "#NUM!"
-    assert 0.9 < time.monotonic() - started < 3
+    assert 0.9 < time.monotonic() - started < 20
     assert not is_alive(process)
     misbehaving.shall("")
     assert worker.call("UF_VERSION", ()) == (("well",),)
@@ -138,7 +138,7 @@ def test_ends_with_its_program(misbehaving, tmp_path, busy):
     program.kill()
     program.wait()
     program.stdout.close()
-    deadline = time.monotonic() + 5
+    deadline = time.monotonic() + 20
     while is_alive(worker) and time.monotonic() < deadline:
         time.sleep(0.05)
     assert not is_alive(worker)
@@ -187,7 +187,7 @@ def test_many_cells_do_not_try_again_at_once(runner, monkeypatch):
     runner.call(*DARCY)
     started = time.monotonic()
     assert {error(runner.call(*DARCY)) for _ in range(1000)} == {"#NAME?"}
-    assert time.monotonic() - started < 1
+    assert time.monotonic() - started < 10  # a try for each cell would take far longer
     monkeypatch.setattr(running, "RETRY", 0.0)
     runner.until = 0.0
     configuration.write_configuration(own_settings() | {"mode": configuration.WORKER})
@@ -202,7 +202,7 @@ def test_a_python_that_vanishes(runner):
     os.kill(runner.target.process.pid, signal.SIGKILL)
     started = time.monotonic()
     assert {error(runner.call(*DARCY)) for _ in range(1000)} == {"#NAME?"}
-    assert time.monotonic() - started < 2
+    assert time.monotonic() - started < 10  # a try for each cell would take far longer
 
 
 @pytest.mark.parametrize("text", ["", "[]", "{}", '{"python": 3}', "no json"])

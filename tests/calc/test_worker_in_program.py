@@ -61,7 +61,7 @@ def test_killed_in_mid_run(office, tmp_path):
         ]
         second = session.children()
         assert len(first) == len(second) == 1 and first != second
-    deadline = time.monotonic() + 5
+    deadline = time.monotonic() + 20
     while is_alive(second[0]) and time.monotonic() < deadline:
         time.sleep(0.05)
     assert not is_alive(second[0])
@@ -84,7 +84,7 @@ def test_program_killed_leaves_no_worker(office, tmp_path):
         (worker,) = session.children()
         session.process.kill()
         session.process.wait()
-    deadline = time.monotonic() + 5
+    deadline = time.monotonic() + 20
     while is_alive(worker) and time.monotonic() < deadline:
         time.sleep(0.05)
     assert not is_alive(worker)
@@ -98,7 +98,7 @@ def test_a_call_that_hangs(office, tmp_path, mode, how):
         stand_in.shall(how)
         started = time.monotonic()
         assert entered(sheet, "A2", "=UF_VERSION()").getError() == NUM
-        assert time.monotonic() - started < 5
+        assert time.monotonic() - started < 20
         stand_in.shall("")
         assert entered(sheet, "A3", "=UF_VERSION()").String == "well"
         assert entered(sheet, "A4", "=UF_FLUX_DARCY(1;1;5E12)").Value == pytest.approx(72)
