@@ -173,10 +173,7 @@ def test_dimensions(record, monkeypatch):
     for name, correlation in [(n, f) for n, f in vars(module).items() if callable(f) and f in CORRELATIONS and f is not record.python]:
         monkeypatch.setattr(module, name, lambda *values, f=correlation: with_unit(
             f(*(getattr(v, "magnitude", v) for v in values)), CORRELATIONS[f].results[0].si_unit))
-    compiled = compile_function(record.worksheet_name)
-    cells = example(record)
-    columns = compiled._read_columns(compiled._completed(cells)) if compiled.columns else {}
-    values = [columns[i] if i in columns else read(c) for i, (read, c) in enumerate(zip(compiled.readers, cells))]
+    values = compile_function(record.worksheet_name).si_values(example(record))
     quantities = [with_unit(v, a.quantity.si_unit) if a.quantity is not None and v is not None else v
                   for a, v in zip(record.arguments, values)]
     results = record.python(*quantities)

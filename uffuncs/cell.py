@@ -13,7 +13,7 @@ import numpy as np
 
 from .declaration import Argument, Function, Tool
 from .errors import CellError, ErrorValue, InvalidInput, NoResult, NotAvailable, UffuncsError
-from .grids import PIECE, Grid, elements, grid
+from .grids import PIECE, Grid, common_shape, elements, grid
 from .reading import RANGES, flattened, is_blank, make_reader, unwrapped
 from .reasons import no_result_reason
 from .registry import find
@@ -146,7 +146,9 @@ class CompiledFunction:
     def si_values(self, cells: Sequence) -> list:
         """The arguments of a call in SI, ranges of whole columns as arrays."""
         cells = self._completed(cells)
-        columns = self._read_columns(cells) if self.columns else {}
+        return self._values(cells, self._read_columns(cells) if self.columns else {})
+
+    def _values(self, cells: Sequence, columns: dict) -> list:
         return [columns[i] if i in columns else read(cell) for i, (read, cell) in enumerate(zip(self.readers, cells))]
 
     # --- ranges, element by element ------------------------------------------------------------------------------
@@ -169,7 +171,7 @@ class CompiledFunction:
     def _element_by_element(self, cells: Sequence, columns: dict) -> list[list]:
         def value(element: list):
             try:
-                return self.scalar([columns[i] if i in columns else read(c) for i, (read, c) in enumerate(zip(self.readers, element))])
+                return self.scalar(self._values(element, columns))
             except UffuncsError as error:
                 return error.as_cell()
 
@@ -188,12 +190,9 @@ class CompiledFunction:
             else:
                 grids.append(grid(argument, read, cell))
         try:
-            shape = np.broadcast_shapes(*(g.shape for g in grids))
-        except ValueError:
-            shapes = ", ".join(f"{a.name} {g.shape[0]}×{g.shape[1]}" for a, g in zip(self.record.arguments, grids)
-                               if g.shape != (1, 1))
-            raise InvalidInput(f"{self.name}: the ranges do not fit together in shape: {shapes}") from None
-
+            shape = common_shape([g.shape for g in grids], self.record.argument_names)
+        except InvalidInput as error:
+            raise InvalidInput(f"{self.name}: {error}") from None
         errors: dict[tuple[int, int], ErrorValue] = {}
         for g in reversed(grids):  # the first argument's error wins
             errors.update(g.errors_in(shape))
@@ -277,18 +276,15 @@ class CompiledFunction:
 
     def _with_columns(self, cells: Sequence):
         columns = self._read_columns(cells)
+        ranges = [i for i, cell in enumerate(cells) if i not in columns and type(cell) in RANGES]
         if self.record.block:
-            values = []
-            for i, (argument, read, cell) in enumerate(zip(self.record.arguments, self.readers, cells)):
-                if i not in columns and type(cell) in RANGES:
-                    raise InvalidInput(f"{self.name}: {argument.name} takes one cell, not a range")
-                values.append(columns[i] if i in columns else read(cell))
+            values = self._values(cells[:ranges[0]] if ranges else cells, columns)  # an earlier argument's error comes first
+            if ranges:
+                raise InvalidInput(f"{self.name}: {self.record.arguments[ranges[0]].name} takes one cell, not a range")
             return self.table(values)
-        rest = [cell for i, cell in enumerate(cells) if i not in columns]
-        if any(type(cell) in RANGES for cell in rest):
+        if ranges:
             return self.block([None if i in columns else cell for i, cell in enumerate(cells)], columns)
-        return self.scalar([columns[i] if i in columns else read(cell)
-                            for i, (read, cell) in enumerate(zip(self.readers, cells))])
+        return self.scalar(self._values(cells, columns))
 
     def _read_columns(self, cells: Sequence) -> dict[int, np.ndarray]:
         """Whole ranges, flattened; rows in which every paired range is blank are left out."""

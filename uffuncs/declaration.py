@@ -19,7 +19,8 @@ from __future__ import annotations
 import inspect
 import sys
 from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass, replace
+from functools import lru_cache
 from typing import Annotated, Any
 
 import numpy as np
@@ -65,16 +66,24 @@ class Argument:
         return self.quantity.unit if self.quantity else "text"
 
     @property
+    def meaning_and_choices(self) -> str:
+        return f"{self.meaning}: {', '.join(self.choices)}" if self.choices else self.meaning
+
+    @property
     def description(self) -> str:
         """Meaning, unit, bounds and default in one line, as wizards show it."""
-        text = self.meaning
+        text = self.meaning_and_choices
         if self.quantity:
             text += f" [{self.quantity.unit}], {self.quantity.low:g} to {self.quantity.high:g}"
-        elif self.choices:
-            text += ": " + ", ".join(self.choices)
         if self.kind == "column":
             text += "; a whole range"
         return shortened(text if self.required else f"{text}; default {self.default_text}")
+
+
+@lru_cache(maxsize=None)
+def parameter_names(function: Callable) -> tuple[str, ...]:
+    """The names of the arguments that a rule's condition takes."""
+    return tuple(inspect.signature(function).parameters)
 
 
 @dataclass(frozen=True)
@@ -87,10 +96,10 @@ class Rule:
     when: Callable[..., bool]
     text: str
     told: Callable[..., str] | None = None
-    names: tuple[str, ...] = field(init=False)
 
-    def __post_init__(self):
-        object.__setattr__(self, "names", tuple(inspect.signature(self.when).parameters))
+    @property
+    def names(self) -> tuple[str, ...]:
+        return parameter_names(self.when)
 
 
 @dataclass(frozen=True)
@@ -108,8 +117,33 @@ class Fitted:
     when: Callable[..., bool] | None = None
 
 
+class _Described:
+    """What the records of functions and tools tell of their arguments."""
+
+    worksheet_name: str
+    arguments: tuple[Argument, ...]
+
+    @property
+    def minimum_cells(self) -> int:
+        return sum(a.required for a in self.arguments)
+
+    @property
+    def maximum_cells(self) -> int | None:
+        """None: any number."""
+        return len(self.arguments)
+
+    @property
+    def argument_names(self) -> tuple[str, ...]:
+        return tuple(a.name for a in self.arguments)
+
+    @property
+    def signature_text(self) -> str:
+        parts = [a.name if a.required else f"{a.name}={a.default_text}" for a in self.arguments]
+        return f"{self.worksheet_name}({', '.join(parts + ['…'] * (self.maximum_cells is None))})"
+
+
 @dataclass(frozen=True)
-class Function:
+class Function(_Described):
     """The record of one worksheet function; every door is derived from it."""
 
     python: Callable
@@ -129,14 +163,6 @@ class Function:
     fitted: tuple[Fitted, ...]
     dimensional: str  # "" where the body is dimensionally sound as it stands, else why it is not
     columns: Callable[..., Sequence[int]] | None = None  # which of the results there are, from arguments by name
-
-    @property
-    def minimum_cells(self) -> int:
-        return sum(a.required for a in self.arguments)
-
-    @property
-    def maximum_cells(self) -> int | None:
-        return len(self.arguments)
 
     @property
     def elementwise(self) -> bool:
@@ -160,20 +186,11 @@ class Function:
         if self.columns is None:
             return self.results
         named = dict(zip(self.argument_names, values))
-        return tuple(self.results[i] for i in self.columns(*map(named.get, inspect.signature(self.columns).parameters)))
-
-    @property
-    def argument_names(self) -> tuple[str, ...]:
-        return tuple(a.name for a in self.arguments)
-
-    @property
-    def signature_text(self) -> str:
-        parts = [a.name if a.required else f"{a.name}={a.default_text}" for a in self.arguments]
-        return f"{self.worksheet_name}({', '.join(parts)})"
+        return tuple(self.results[i] for i in self.columns(*map(named.get, parameter_names(self.columns))))
 
 
 @dataclass(frozen=True)
-class Tool:
+class Tool(_Described):
     """A worksheet function that works on cells as they are: function names, further cells for another function."""
 
     python: Callable  # takes the cells, returns a cell value or a block of them
@@ -191,25 +208,12 @@ class Tool:
     source: str
 
     @property
-    def minimum_cells(self) -> int:
-        return sum(a.required for a in self.arguments)
-
-    @property
     def maximum_cells(self) -> int | None:
         return None if self.variadic else len(self.arguments)
 
     @property
     def result_unit(self) -> str:
         return self.result_text
-
-    @property
-    def argument_names(self) -> tuple[str, ...]:
-        return tuple(a.name for a in self.arguments)
-
-    @property
-    def signature_text(self) -> str:
-        parts = [a.name if a.required else f"{a.name}={a.default_text}" for a in self.arguments]
-        return f"{self.worksheet_name}({', '.join(parts + ['…'] * self.variadic)})"
 
 
 #: worksheet name -> record, filled as the topic modules are imported (see registry.py)

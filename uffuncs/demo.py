@@ -41,18 +41,11 @@ def build_and_recalculate(folder: Path, overwrite: bool = False):
     FileExistsError
         There is such a workbook already, and `overwrite` is not given.
     """
-    import tempfile
-
-    from .headless import recalculate
-
     target = folder / NAME
     if target.exists() and not overwrite:
         raise FileExistsError(17, "File exists", str(target))
     folder.mkdir(parents=True, exist_ok=True)
-    with tempfile.TemporaryDirectory() as scratch:
-        bare = Path(scratch) / NAME
-        builder().build(bare)
-        report = recalculate(bare, target)
+    report = builder("layout").write_with_values(builder().build, target)
     return target, key_results(target), report
 
 

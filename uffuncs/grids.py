@@ -98,6 +98,22 @@ def _outside(read: Callable, numbers: np.ndarray, q: Quantity) -> dict[tuple[int
     return errors
 
 
+def common_shape(shapes: Sequence[tuple[int, int]], names: Sequence[str] = ()) -> tuple[int, int]:
+    """The shape that ranges are broadcast to.
+
+    Raises
+    ------
+    InvalidInput
+        They do not fit together; the reason gives the shape of each, with its name where there is one.
+    """
+    try:
+        return np.broadcast_shapes(*shapes)
+    except ValueError:
+        labels = [f"{name} " for name in names] or [""] * len(shapes)
+        shown = ", ".join(f"{label}{h}×{w}" for label, (h, w) in zip(labels, shapes) if (h, w) != (1, 1))
+        raise InvalidInput(f"the ranges do not fit together in shape: {shown}") from None
+
+
 def elements(cells: Sequence, whole=()) -> list[list[list]]:
     """The cells of each element of a broadcast call, as rows; `whole` places are passed as they are.
 
@@ -117,10 +133,6 @@ def elements(cells: Sequence, whole=()) -> list[list[list]]:
             for c in range(width):
                 cell_grid[r, c] = row[c] if c < len(row) else None
         grids.append(cell_grid)
-    try:
-        grids = np.broadcast_arrays(*grids)
-    except ValueError:
-        shapes = ", ".join(f"{g.shape[0]}×{g.shape[1]}" for g in grids if g.shape != (1, 1))
-        raise InvalidInput(f"the ranges do not fit together in shape: {shapes}") from None
-    rows, columns = grids[0].shape
+    rows, columns = common_shape([g.shape for g in grids])
+    grids = np.broadcast_arrays(*grids)
     return [[[g[r, c] for g in grids] for c in range(columns)] for r in range(rows)]

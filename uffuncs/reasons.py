@@ -3,15 +3,15 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 
-from .declaration import Argument, Fitted, Function, Rule
+from .declaration import Argument, Fitted, Function, Rule, parameter_names
 
 
 def no_result_reason(record: Function, values: Sequence) -> str:
     """Why sound arguments (in SI) gave no finite result."""
     for rule in record.refuses:
-        if _holds(rule.when, rule.names, record, values, None):
+        if _evaluated(rule.when, record, values, None):
             return f"{record.worksheet_name}: {_told(rule, record, values, None)}"
     zeros = [a.name for a, v in zip(record.arguments, values) if a.kind == "number" and v is not None and v == 0]
     cause = f"; {', '.join(zeros)} {'is' if len(zeros) == 1 else 'are'} 0" if zeros else ""
@@ -20,8 +20,7 @@ def no_result_reason(record: Function, values: Sequence) -> str:
 
 def cautions(record: Function, values: Sequence, result: object = None) -> list[str]:
     """What to be careful with, for arguments and result in SI."""
-    found = [_told(rule, record, values, result) for rule in record.cautions
-             if _holds(rule.when, rule.names, record, values, result)]
+    found = _that_hold(record.cautions, record, values, result)
     for fitted in record.fitted:
         found += filter(None, [_outside_fitted(record, fitted, values, result)])
     for argument, value in zip(record.arguments, values):
@@ -36,8 +35,11 @@ def cautions(record: Function, values: Sequence, result: object = None) -> list[
 
 def remarks(record: Function, values: Sequence, result: object = None) -> list[str]:
     """What else there is to tell, for example the branch used."""
-    return [_told(rule, record, values, result) for rule in record.remarks
-            if _holds(rule.when, rule.names, record, values, result)]
+    return _that_hold(record.remarks, record, values, result)
+
+
+def _that_hold(rules: Sequence[Rule], record: Function, values: Sequence, result: object) -> list[str]:
+    return [_told(rule, record, values, result) for rule in rules if _evaluated(rule.when, record, values, result)]
 
 
 def _is_zero(argument: Argument, value: object) -> bool:
@@ -45,13 +47,13 @@ def _is_zero(argument: Argument, value: object) -> bool:
 
 
 def _outside_fitted(record: Function, fitted: Fitted, values: Sequence, result: object) -> str:
-    if fitted.when is not None and not _call(fitted.when, record, values, result):
+    if fitted.when is not None and not _evaluated(fitted.when, record, values, result):
         return ""
     if fitted.value is None:
         value = _named(record, values, result)[fitted.name]
         shown = record.arguments[record.argument_names.index(fitted.name)].quantity.shown
     else:
-        value = _call(fitted.value, record, values, result)
+        value = _evaluated(fitted.value, record, values, result)
         shown = "{:.6g}".format
     if value is None or not math.isfinite(value):
         return ""
@@ -65,26 +67,17 @@ def _named(record: Function, values: Sequence, result: object) -> dict[str, obje
     return {**dict(zip(record.argument_names, values)), "result": result}
 
 
-def _call(condition, record: Function, values: Sequence, result: object):
-    from inspect import signature
-
+def _evaluated(condition: Callable, record: Function, values: Sequence, result: object):
+    """A condition or a number of a declaration, from arguments by name; None where it cannot be told, as on one left out."""
     named = _named(record, values, result)
     try:
-        return condition(**{name: named[name] for name in signature(condition).parameters})
-    except (ZeroDivisionError, OverflowError):
+        return condition(**{name: named[name] for name in parameter_names(condition)})
+    except (ArithmeticError, TypeError):
         return None
 
 
-def _holds(when, names: Sequence[str], record: Function, values: Sequence, result: object) -> bool:
-    named = _named(record, values, result)
-    try:
-        return bool(when(**{name: named[name] for name in names}))
-    except (ArithmeticError, TypeError):  # the condition cannot be told, for example on an argument left out
-        return False
-
-
 def _told(rule: Rule, record: Function, values: Sequence, result: object) -> str:
-    return _call(rule.told, record, values, result) if rule.told else _filled(rule.text, record, values, result)
+    return _evaluated(rule.told, record, values, result) if rule.told else _filled(rule.text, record, values, result)
 
 
 def _filled(text: str, record: Function, values: Sequence, result: object) -> str:

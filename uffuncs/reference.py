@@ -5,7 +5,7 @@ from __future__ import annotations
 from itertools import groupby
 
 from .check_values import Check, checks_of
-from .declaration import Function, Tool
+from .declaration import Argument, Function, Tool
 from .docstrings import fitted_text, plain_rule
 from .registry import functions
 
@@ -66,9 +66,7 @@ def _markdown_of(record: Record) -> list[str]:
     if record.arguments:
         lines += ["| argument | unit | lowest | highest | default | meaning |", "|---|---|---|---|---|---|"]
         for a in record.arguments:
-            low, high = (f"{a.quantity.low:g}", f"{a.quantity.high:g}") if a.quantity else ("", "")
-            cells = (a.name, a.unit, low, high, "" if a.required else a.default_text, meaning_text(a))
-            lines.append("| " + " | ".join(_md(str(c)).replace("|", "\\|") for c in cells) + " |")
+            lines.append("| " + " | ".join(_md(text).replace("|", "\\|") for text in _argument_row(a)) + " |")
         lines.append("")
     lines += [f"Result: {_md(result_text(record))}", ""]
     lines += [f"* {_md(text)}" for text in limit_texts(record)]
@@ -82,10 +80,14 @@ def _md(text: str) -> str:
     return text.replace("*", "\\*").replace("_", "\\_").replace("<", "&lt;")
 
 
-def meaning_text(argument) -> str:
+def _argument_row(a: Argument) -> tuple[str, ...]:
+    low, high = (f"{a.quantity.low:g}", f"{a.quantity.high:g}") if a.quantity else ("", "")
+    return a.name, a.unit, low, high, "" if a.required else a.default_text, meaning_text(a)
+
+
+def meaning_text(argument: Argument) -> str:
     """Meaning with the choices, and whether a whole range is taken."""
-    text = argument.meaning + (": " + ", ".join(argument.choices) if argument.choices else "")
-    return text + (" (a whole range)" if argument.kind in ("column", "labels") else "")
+    return argument.meaning_and_choices + (" (a whole range)" if argument.kind in ("column", "labels") else "")
 
 
 def limit_texts(record: Record) -> list[str]:
@@ -131,8 +133,7 @@ def show(console, record: Record) -> None:
     if record.arguments:
         table = Table("Argument", "Unit", "Lowest", "Highest", "Default", "Meaning", box=None, pad_edge=False)
         for a in record.arguments:
-            low, high = (f"{a.quantity.low:g}", f"{a.quantity.high:g}") if a.quantity else ("", "")
-            table.add_row(a.name, a.unit, low, high, "" if a.required else a.default_text, meaning_text(a))
+            table.add_row(*_argument_row(a))
         console.print(table)
         line()
     line(f"Result: {result_text(record)}")

@@ -207,13 +207,10 @@ def convert(value: float, from_unit: str, to_unit: str) -> float:
     InvalidInput
         An unknown unit, unlike dimensions, or a gauge pressure asked for as an absolute one.
     """
-    pressures = [(_GAUGE.fullmatch(u.strip()), _ABSOLUTE.fullmatch(u.strip())) for u in (from_unit, to_unit)]
-    (gauge_in, absolute_in), (gauge_out, absolute_out) = pressures
-    if (gauge_in and absolute_out) or (absolute_in and gauge_out):
+    plain, references = zip(*map(_without_reference, (from_unit.strip(), to_unit.strip())))
+    if set(references) == {"gauge", "absolute"}:
         raise InvalidInput(f"'{from_unit}' and '{to_unit}' differ by the atmospheric pressure; add or subtract it")
-    plain = [(g or a)[1] if (g or a) else u.strip() for (g, a), u in zip(pressures, (from_unit, to_unit))]
-    if any(u in _TEMPERATURES for u in plain):
-        plain = [_temperature(u) for u in plain]
+    plain = [_temperature(u) for u in plain]
     known = [_known(u) for u in plain]
     if None not in known and known[0][0] == known[1][0] and "°C difference" not in plain:
         return _converted(value, *known[0][1:], *known[1][1:])
@@ -268,22 +265,27 @@ def known_unit(text: str) -> None:
     InvalidInput
         An unknown unit.
     """
-    text = text.strip()
-    if _known(text) is None and text not in _TEMPERATURES:
-        pressure = _GAUGE.fullmatch(text) or _ABSOLUTE.fullmatch(text)
-        if _known(pressure[1] if pressure else text) is None:
-            _to_base(pressure[1] if pressure else text)
+    plain = _temperature(_without_reference(text.strip())[0])
+    if _known(plain) is None:
+        _to_base(plain)
+
+
+def _without_reference(text: str) -> tuple[str, str]:
+    """A pressure unit without its mark, and what the mark says: "gauge", "absolute", or nothing."""
+    for pattern, reference in ((_GAUGE, "gauge"), (_ABSOLUTE, "absolute")):
+        if found := pattern.fullmatch(text):
+            return found[1], reference
+    return text, ""
 
 
 def _pressure_reference(text: str, absolute: bool) -> str:
-    gauge, is_absolute = _GAUGE.fullmatch(text), _ABSOLUTE.fullmatch(text)
+    plain, reference = _without_reference(text)
     if text == "mPa":
         raise InvalidInput("'mPa' is a millipascal; did you mean MPa?")
-    if absolute and (gauge or text == "psid"):
+    if absolute and (reference == "gauge" or text == "psid"):
         raise InvalidInput(f"'{text}' is a gauge pressure; give an absolute pressure, for example '1.013 bara'")
-    if not absolute and is_absolute:
+    if not absolute and reference == "absolute":
         raise InvalidInput(f"'{text}' is an absolute pressure; give a gauge pressure or a difference, for example '2 barg'")
-    plain = (gauge or is_absolute)[1] if (gauge or is_absolute) else text
     return _KILOGRAM_FORCE.sub("kgf/cm**2", plain)
 
 

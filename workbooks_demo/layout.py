@@ -162,11 +162,11 @@ def save(workbook: Workbook, path: Path) -> None:
         raise
 
 
-def write_with_values(build, path: Path) -> None:
-    """Build a workbook and recalculate it; the finished file is moved into place."""
+def write_with_values(build, path: Path):
+    """Build a workbook and recalculate it; the finished file is moved into place. Gives the report."""
     from uffuncs.headless import recalculate
 
     with tempfile.TemporaryDirectory() as scratch:
         bare = Path(scratch) / path.name
         build(bare)
-        recalculate(bare, path)
+        return recalculate(bare, path)

@@ -8,6 +8,7 @@ import sys
 import tempfile
 from pathlib import Path
 
+from ..files import write_whole
 from ..version import __version__
 from .extension import FILE_NAME, OLDEST_LIBREOFFICE, extension
 from .inside.configuration import AUTOMATIC, TIME_LIMIT, configuration_path, problem_path, write_configuration
@@ -23,16 +24,7 @@ ABSENT = "no such extension deployed"
 def build(folder: Path | str) -> Path:
     """Write the extension alone into a folder, which is made if it is not there; the file's path."""
     target = Path(folder) / FILE_NAME
-    target.parent.mkdir(parents=True, exist_ok=True)
-    handle, temporary = tempfile.mkstemp(prefix=".uffuncs-", suffix=".tmp", dir=target.parent)
-    try:
-        with os.fdopen(handle, "wb") as file:
-            file.write(extension())
-        os.chmod(temporary, 0o644)
-        os.replace(temporary, target)
-    except BaseException:
-        os.unlink(temporary)
-        raise
+    write_whole(target, extension())
     return target
 
 

@@ -16,6 +16,7 @@ from importlib.util import find_spec
 from pathlib import Path
 from xml.sax.saxutils import escape
 
+from ..files import write_whole
 from ..version import __version__
 from .adapter import category
 from .errors import ExcelDoorError
@@ -152,19 +153,6 @@ def settings_bytes(interpreter: str, libraries: dict[str, str]) -> bytes:
             f"Excel's macros cannot spell the path {interpreter}; "
             "set Python up in a folder with plain letters"
         ) from None
-
-
-def write_whole(path: Path, content: bytes) -> None:
-    """Written beside and moved into place: never half a file, and an old one stays if the move fails."""
-    path.parent.mkdir(parents=True, exist_ok=True)
-    handle, name = tempfile.mkstemp(prefix="~uffuncs", suffix=".tmp", dir=path.parent)
-    try:
-        with os.fdopen(handle, "wb") as file:
-            file.write(content)
-        os.replace(name, path)
-    except BaseException:
-        os.unlink(name)
-        raise
 
 
 # --- the package around the project -----------------------------------------------------------------------

@@ -6,12 +6,12 @@ A workbook from elsewhere is untrusted: sizes are checked in the zip directory a
 import io
 import os
 import re
-import stat
-import tempfile
 import zipfile
 import zlib
 from pathlib import Path
 from xml.parsers import expat
+
+from ..files import write_into_place
 
 MAX_FILE_BYTES = 512 * 1024**2  # of the file as stored
 MAX_PART_BYTES = 384 * 1024**2  # of one inflated part; a full sheet of a million rows stays below
@@ -313,36 +313,17 @@ def output_path(source, output, in_place):
     return Path(os.path.realpath(target))
 
 
-def write_into_place(target, write):
-    """Call write(stream) on a temporary file beside target, then move it into place in one step."""
+def _into_place(target, write):
+    """Write a workbook; what the file system refuses is one line."""
     try:
-        mode = stat.S_IMODE(target.stat().st_mode) if target.exists() else 0o666 & ~_umask()
-        handle, temporary = tempfile.mkstemp(prefix=".recalc-", suffix=".tmp", dir=target.parent)
+        write_into_place(target, write)
     except OSError as error:
         raise UnreadableWorkbook(f"{target}: cannot be written ({_one_line(error)})") from None
-    try:
-        with os.fdopen(handle, "wb") as stream:
-            write(stream)
-            stream.flush()
-            os.fsync(stream.fileno())
-        os.chmod(temporary, mode)
-        os.replace(temporary, target)
-    except OSError as error:
-        raise UnreadableWorkbook(f"{target}: cannot be written ({_one_line(error)})") from None
-    finally:
-        if os.path.exists(temporary):
-            os.unlink(temporary)
-
-
-def _umask():
-    current = os.umask(0)
-    os.umask(current)
-    return current
 
 
 def copy_into_place(package, target):
     """Write the package exactly as it was read."""
-    write_into_place(target, lambda stream: stream.write(package.stored))
+    _into_place(target, lambda stream: stream.write(package.stored))
 
 
 def save_parts(package, target, parts):
@@ -350,4 +331,4 @@ def save_parts(package, target, parts):
     if not parts:
         copy_into_place(package, target)
         return
-    write_into_place(target, lambda stream: package.write(stream, parts))
+    _into_place(target, lambda stream: package.write(stream, parts))

@@ -91,8 +91,7 @@ def uf_arguments(name):
     rows = []
     for a in record.arguments:
         low, high = (a.quantity.low, a.quantity.high) if a.quantity else ("", "")
-        meaning = a.meaning + (": " + ", ".join(a.choices) if a.choices else "")
-        rows.append([a.name, a.unit, low, high, "" if a.required else a.default_text, meaning])
+        rows.append([a.name, a.unit, low, high, "" if a.required else a.default_text, a.meaning_and_choices])
     return rows
 
 

@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import math
-
 from ..declaration import cell_tool
 from ..errors import InvalidInput
 from ..units import convert, known_unit
@@ -56,8 +54,8 @@ def uf_quantity(value, unit, uncertainty):
 
 def _quantity(value, unit, uncertainty) -> str:
     number, spread, text = plain_number("value", value), plain_number("uncertainty", uncertainty), plain_text("unit", unit)
-    if not (math.isfinite(number) and math.isfinite(spread)) or spread < 0:
-        raise InvalidInput(f"value and uncertainty must be numbers, the uncertainty not below 0; got {number:g}, {spread:g}")
+    if spread < 0:
+        raise InvalidInput(f"the uncertainty must not be below 0; got {spread:g}")
     known_unit(text)
     if not spread:
         return f"{number!r} {text}"
