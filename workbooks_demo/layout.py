@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import os
 import tempfile
 from pathlib import Path
 
@@ -16,6 +15,8 @@ from openpyxl.utils import get_column_letter
 from openpyxl.workbook.defined_name import DefinedName
 from openpyxl.worksheet.formula import ArrayFormula
 from openpyxl.worksheet.worksheet import Worksheet
+
+from uffuncs.files import write_into_place
 
 LABEL, SYMBOL, VALUE, UNIT, REMARK = "A", "B", "C", "D", "E"
 WIDTHS = {LABEL: 44, SYMBOL: 11, VALUE: 16, UNIT: 17, REMARK: 62}
@@ -151,15 +152,7 @@ def column_range(first_row: int, last_row: int, column: int) -> str:
 
 def save(workbook: Workbook, path: Path) -> None:
     """Write beside the target, then move into place."""
-    path = Path(path)
-    handle, name = tempfile.mkstemp(suffix=".xlsx", dir=path.parent)
-    os.close(handle)
-    try:
-        workbook.save(name)
-        os.replace(name, path)
-    except BaseException:
-        os.unlink(name)
-        raise
+    write_into_place(Path(path), workbook.save)
 
 
 def write_with_values(build, path: Path):
